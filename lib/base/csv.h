@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* csv.h: x and y out of a CSV file that a person made: the first two columns whatever the header calls
- * them, and columns named ux or uy. Pure: works on text. */
+/* csv.h: x and y out of a CSV file that a person made: the first two columns whatever the header
+ * calls them, and columns named ux or uy. Pure: works on text. */
 #ifndef SM_BASE_CSV_H
 #define SM_BASE_CSV_H
 #include <stdbool.h>
@@ -12,9 +12,9 @@
 struct sm_csv {
     const char *text;
     size_t n, at;
-    unsigned line; /* of the row given last */
-    char separator; /* ',' ';' or tab, found from the header */
-    bool decimal_comma; /* only where the separator is ; or tab */
+    unsigned line;                 /* of the row given last */
+    char separator;                /* ',' ';' or tab, found from the header */
+    bool decimal_comma;            /* only where the separator is ; or tab */
     unsigned fields, ux_at, uy_at; /* from 1; 0 = not there */
     char x_name[SM_NAME_SIZE], y_name[SM_NAME_SIZE];
     bool header;

@@ -17,9 +17,11 @@
 /* RFC 3339 with six decimals and Z; years 0000 to 9999 (asserted). Returns the length, 27. */
 size_t sm_utc_write(char out[SM_UTC_SIZE], int64_t utc_us);
 
-/* RFC 3339: "T" or "t" (or one space), 0 to 9 decimals (cut to µs), "Z", "z" or ±hh:mm; a leap second
- * (:60) reads as the second after it.
- *   SM_ESYNTAX  anything else, a day that does not exist included */
+/* RFC 3339: "T" or "t" (or one space), 0 to 9 decimals (cut to µs), "Z", "z" or ±hh:mm; a leap
+ * second
+ * (:60, only as the last second of a UTC month) reads as the second after it. What is read can be
+ * written.
+ *   SM_ESYNTAX  anything else: a day that does not exist, or not in years 0000 to 9999 of UTC */
 SM_MUST_CHECK enum sm_status sm_utc_parse(const char *s, size_t n, int64_t *ret_utc_us);
 
 /* Whole days since 1970-01-01, downwards. */
