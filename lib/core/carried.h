@@ -3,7 +3,8 @@
  * every section is left out of the log when empty. A file begins from the `carried` in its `open`. */
 #ifndef SM_CORE_CARRIED_H
 #define SM_CORE_CARRIED_H
-#include "bench/sheet.h"
+#include "bench/result.h"
+#include "bench/run.h"
 #include "signal/signal.h"
 
 #define SM_RESULTS_MAX 1000  /* not final at one time */
@@ -13,26 +14,6 @@
 
 enum sm_place { SM_AT_UNKNOWN, SM_AT_STILL, SM_AT_LEFT };
 const char *sm_place_name(enum sm_place p); /* "unknown", "still in it", "left" */
-
-enum sm_result_state { SM_RESULT_PROVISIONAL, SM_RESULT_RELEASED, SM_RESULT_HELD, SM_RESULT_AMENDED,
-                       SM_RESULT_VOIDED };
-const char *sm_result_state_name(enum sm_result_state s);
-
-struct sm_carried_item {
-    unsigned captures; /* how many it has */
-    int64_t capture;   /* n of the latest; 0 none */
-    bool skipped;
-};
-
-struct sm_carried_run {
-    bool has;
-    int64_t number;            /* count of the meter's sheet acts */
-    char sheet[SM_NAME_SIZE];  /* its file */
-    size_t n_items;
-    size_t next;               /* index of the item that the next transit or mark opens; n_items: done */
-    bool open;                 /* item `next - 1` is open: begun, not captured */
-    struct sm_carried_item item[SM_ITEMS_MAX];
-};
 
 struct sm_carried_point {
     int64_t capture; /* n */

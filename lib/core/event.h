@@ -4,6 +4,7 @@
  * t_ns and utc_us of its input. */
 #ifndef SM_CORE_EVENT_H
 #define SM_CORE_EVENT_H
+#include "bench/judge.h"
 #include "core/carried.h"
 #include "core/input.h"
 
@@ -53,16 +54,6 @@ struct sm_event_capture {
     size_t n_remarks;
     char remark[4][SM_REASON_SIZE];
 };
-
-/* One rule applied: the quantity, its figure, the limit and the verdict. */
-struct sm_judged {
-    char quantity[48]; /* "levels", "r_squared", … */
-    double value, from, to;
-    bool has_from, has_to;
-    bool pass;
-    char text[SM_REASON_SIZE]; /* in words, with what to do when failed */
-};
-#define SM_JUDGED_MAX 12
 
 struct sm_event_curve {
     int64_t run;
