@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* judge.h: is a curve fit to give results? Each rule with its figure, its limit and its verdict; R² comes
- * last and is never enough. */
+/* judge.h: is a curve fit to give results? Each rule with its figure, its limit and its verdict; R²
+ * comes last and is never enough. */
 #ifndef SM_BENCH_JUDGE_H
 #define SM_BENCH_JUDGE_H
 #include "bench/method.h"
@@ -14,7 +14,6 @@ struct sm_judged {
     char text[SM_REASON_SIZE]; /* in words, with what to do when failed */
 };
 #define SM_JUDGED_MAX 12
-
 
 struct sm_judgement {
     bool fitted, accepted;
@@ -32,5 +31,6 @@ double sm_judge_read_back(const struct sm_curve *c, const struct sm_point *p);
 
 /* A check standard of value `want` was read as `found`: within the method's limit? Judged before
  * rounding, no allowance. ret_why says it in words. */
-bool sm_judge_check(const struct sm_method *m, double want, double found, char ret_why[SM_REASON_SIZE]);
+bool sm_judge_check(const struct sm_method *m, double want, double found,
+                    char ret_why[SM_REASON_SIZE]);
 #endif

@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* method.h: the rules of one method: what settled means, which standards, what is accepted. Filled by
- * lib/setup from conf/methods/; every limit names the quantity it limits. */
+/* method.h: the rules of one method: what settled means, which standards, what is accepted. Filled
+ * by lib/setup from conf/methods/; every limit names the quantity it limits. */
 #ifndef SM_BENCH_METHOD_H
 #define SM_BENCH_METHOD_H
 #include "base/unit.h"
@@ -27,7 +27,12 @@ struct sm_window_limit {
     struct sm_limit from, to, warn_from, warn_to;
 };
 
-enum sm_caution_when { SM_CAUTION_LOADING, SM_CAUTION_STANDARD, SM_CAUTION_CHECK, SM_CAUTION_SAMPLE };
+enum sm_caution_when {
+    SM_CAUTION_LOADING,
+    SM_CAUTION_STANDARD,
+    SM_CAUTION_CHECK,
+    SM_CAUTION_SAMPLE
+};
 
 struct sm_caution {
     enum sm_caution_when when;
@@ -39,24 +44,24 @@ enum sm_redo { SM_REDO_FOR_CAUSE, SM_REDO_MEAN, SM_REDO_FIRST };
 
 struct sm_method {
     char name[SM_NAME_SIZE];
-    enum sm_unit measures;           /* unit of results */
-    char signal[SM_CHANNEL_SIZE];    /* the channel that must settle */
+    enum sm_unit measures;        /* unit of results */
+    char signal[SM_CHANNEL_SIZE]; /* the channel that must settle */
     enum sm_temperature_from temperature_from;
     char temperature[SM_CHANNEL_SIZE]; /* CHANNEL */
     double assumed_c;                  /* ASSUMED, °C */
     enum sm_model model;
     double ph_iso, ph_iso_half_width;
-    struct sm_rule rule; /* resolved in the signal's unit */
+    struct sm_rule rule;                                  /* resolved in the signal's unit */
     struct sm_quantity tolerance_written[SM_CLASS_COUNT]; /* as in the file */
     char note[SM_REASON_SIZE]; /* a sentence shown with the rule: "for the demonstration: …" */
     unsigned levels, levels_after_drop; /* distinct standards needed */
     struct sm_limit r_squared;
-    struct sm_limit residual_sd;              /* signal unit */
-    struct sm_window_limit slope;             /* % of theory */
-    struct sm_window_limit offset;            /* signal unit */
-    struct sm_limit back_calculated;          /* unit of results */
-    struct sm_limit leave_one_out;            /* unit of results */
-    int64_t curve_valid_ns;                   /* 0: no end by age */
+    struct sm_limit residual_sd;                   /* signal unit */
+    struct sm_window_limit slope;                  /* % of theory */
+    struct sm_window_limit offset;                 /* signal unit */
+    struct sm_limit back_calculated;               /* unit of results */
+    struct sm_limit leave_one_out;                 /* unit of results */
+    int64_t curve_valid_ns;                        /* 0: no end by age */
     struct sm_limit after_curve, after_curve_warn; /* unit of results */
     struct sm_limit check, check_warn;             /* unit of results */
     unsigned check_every;                          /* samples; 0: not */

@@ -25,8 +25,8 @@ enum sm_class sm_item_class(enum sm_item_kind k);
 
 struct sm_item {
     enum sm_item_kind kind;
-    char name[SM_NAME_SIZE]; /* of the standard, the check standard, or the sample; DUPLICATE, SPIKE: the
-                              * sample it repeats */
+    char name[SM_NAME_SIZE]; /* of the standard, the check standard, or the sample; DUPLICATE,
+                              * SPIKE: the sample it repeats */
     int standard;            /* index into the setup's standards; -1: none */
     char place[SM_NAME_SIZE], by[SM_NAME_SIZE]; /* "" not stated */
     bool has_sampled;

@@ -1,15 +1,16 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* carried.h: the plain data that outlives an immersion, restated in the log. Ages instead of times;
- * every section is left out of the log when empty. A file begins from the `carried` in its `open`. */
+ * every section is left out of the log when empty. A file begins from the `carried` in its `open`.
+ */
 #ifndef SM_CORE_CARRIED_H
 #define SM_CORE_CARRIED_H
 #include "bench/result.h"
 #include "bench/run.h"
 #include "signal/signal.h"
 
-#define SM_RESULTS_MAX 1000  /* not final at one time */
-#define SM_QUESTIONS_MAX 32  /* open at one time */
-#define SM_ACT_IDS_MAX 64    /* remembered, so that a repeat is ignored */
+#define SM_RESULTS_MAX 1000           /* not final at one time */
+#define SM_QUESTIONS_MAX 32           /* open at one time */
+#define SM_ACT_IDS_MAX 64             /* remembered, so that a repeat is ignored */
 #define SM_CARRIED_MAX (512u * 1024u) /* bytes as JSON */
 
 enum sm_place { SM_AT_UNKNOWN, SM_AT_STILL, SM_AT_LEFT };
@@ -26,7 +27,7 @@ struct sm_carried_curve {
     bool has;
     int64_t n; /* of the `curve` event; 0: not fitted yet, points only */
     bool accepted;
-    bool ended;               /* no results any more: why_ended */
+    bool ended; /* no results any more: why_ended */
     char why_ended[SM_REASON_SIZE];
     char sensor[SM_NAME_SIZE];
     char method[SM_NAME_SIZE];
@@ -38,7 +39,7 @@ struct sm_carried_curve {
 struct sm_carried_result {
     int64_t n;
     int64_t run;
-    size_t item; /* from 1; 0: none */
+    size_t item;                /* from 1; 0: none */
     enum sm_result_state state; /* PROVISIONAL or HELD */
     char why[SM_REASON_SIZE];   /* held: why; provisional: what it waits for */
 };

@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* core.h: one meter's core: fed inputs, drained of events. No I/O, no clock, no threads, no globals;
- * everything is allocated at start.
+/* core.h: one meter's core: fed inputs, drained of events. No I/O, no clock, no threads, no
+ * globals; everything is allocated at start.
  *
  *     sm_core_feed(core, &input);
  *     while (sm_core_next(core, &event))
@@ -45,10 +45,8 @@ SM_MUST_CHECK enum sm_status sm_core_start(const struct sm_core_setup *setup,
                                            char ret_why[SM_REASON_SIZE]);
 void sm_core_destroy(struct sm_core *c);
 
-/* One input. The first of a file is normally a link. Events that are logged are numbered in->n + 1 and
- * on.
- *   SM_EBUSY   not drained yet
- *   SM_EORDER  n or t_ns not after the last */
+/* One input. The first of a file is normally a link. Events that are logged are numbered in->n + 1
+ * and on. SM_EBUSY   not drained yet SM_EORDER  n or t_ns not after the last */
 SM_MUST_CHECK enum sm_status sm_core_feed(struct sm_core *c, const struct sm_input *in);
 
 /* The next event, lent until the next call; false: drained. */
@@ -72,8 +70,14 @@ void sm_core_carried(const struct sm_core *c, struct sm_carried *ret_carried);
 const struct sm_sheet *sm_core_sheet(const struct sm_core *c);
 
 enum sm_bench_state {
-    SM_STATE_NO_LINK, SM_STATE_SILENT, SM_STATE_WAITING, /* no reading yet */
-    SM_STATE_OPEN, SM_STATE_SETTLING, SM_STATE_SETTLED, SM_STATE_NOT_SETTLED, SM_STATE_RESTING
+    SM_STATE_NO_LINK,
+    SM_STATE_SILENT,
+    SM_STATE_WAITING, /* no reading yet */
+    SM_STATE_OPEN,
+    SM_STATE_SETTLING,
+    SM_STATE_SETTLED,
+    SM_STATE_NOT_SETTLED,
+    SM_STATE_RESTING
 };
 const char *sm_bench_state_name(enum sm_bench_state s);
 
@@ -98,8 +102,8 @@ struct sm_core_status {
     size_t provisional, held, questions;
     unsigned since_check;
     char on_duty[SM_NAME_SIZE];
-    const char *caution; /* of the step; NULL none; lent */
-    uint64_t unread; /* lines that gave no reading, in this file */
+    const char *caution;     /* of the step; NULL none; lent */
+    uint64_t unread;         /* lines that gave no reading, in this file */
     const char *method_note; /* "" none */
 };
 void sm_core_status(const struct sm_core *c, struct sm_core_status *ret_status);

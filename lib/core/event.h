@@ -1,7 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* event.h: what the core says. Durable events are announced only when they are on disk; logged ones are
- * numbered and shown at once; live ones have no number and are never in the log. An event repeats the
- * t_ns and utc_us of its input. */
+/* event.h: what the core says. Durable events are announced only when they are on disk; logged ones
+ * are numbered and shown at once; live ones have no number and are never in the log. An event
+ * repeats the t_ns and utc_us of its input. */
 #ifndef SM_CORE_EVENT_H
 #define SM_CORE_EVENT_H
 #include "bench/judge.h"
@@ -12,13 +12,26 @@ enum sm_event_class { SM_DURABLE, SM_LOGGED, SM_LIVE };
 
 enum sm_event_kind {
     /* durable */
-    SM_EVENT_CAPTURE, SM_EVENT_CURVE, SM_EVENT_CHECK, SM_EVENT_RESULT, SM_EVENT_HOLD,
-    SM_EVENT_RELEASE, SM_EVENT_QUESTION, SM_EVENT_ANSWER,
+    SM_EVENT_CAPTURE,
+    SM_EVENT_CURVE,
+    SM_EVENT_CHECK,
+    SM_EVENT_RESULT,
+    SM_EVENT_HOLD,
+    SM_EVENT_RELEASE,
+    SM_EVENT_QUESTION,
+    SM_EVENT_ANSWER,
     /* logged */
-    SM_EVENT_MOVED, SM_EVENT_TRANSIT, SM_EVENT_NOT_SETTLED, SM_EVENT_OPEN_CIRCUIT, SM_EVENT_SILENT,
-    SM_EVENT_UNREAD, SM_EVENT_ASK, SM_EVENT_CARRIED,
+    SM_EVENT_MOVED,
+    SM_EVENT_TRANSIT,
+    SM_EVENT_NOT_SETTLED,
+    SM_EVENT_OPEN_CIRCUIT,
+    SM_EVENT_SILENT,
+    SM_EVENT_UNREAD,
+    SM_EVENT_ASK,
+    SM_EVENT_CARRIED,
     /* live */
-    SM_EVENT_READING, SM_EVENT_SETTLING,
+    SM_EVENT_READING,
+    SM_EVENT_SETTLING,
     SM_EVENT_COUNT
 };
 const char *sm_event_kind_name(enum sm_event_kind k); /* the "k" of its entry */
@@ -26,9 +39,9 @@ enum sm_event_class sm_event_class(enum sm_event_kind k);
 
 /* Where in the bench sheet. */
 struct sm_whereabouts {
-    bool has;      /* false: no sheet, or given to no item */
+    bool has; /* false: no sheet, or given to no item */
     int64_t run;
-    size_t item;   /* from 1 */
+    size_t item; /* from 1 */
     enum sm_item_kind kind;
     char name[SM_NAME_SIZE]; /* title: "B4", "duplicate of final" */
 };
@@ -42,12 +55,12 @@ struct sm_other_mean {
 struct sm_event_capture {
     int64_t moved; /* n of its `moved` */
     struct sm_whereabouts where;
-    int64_t number;       /* count of captures of this meter */
+    int64_t number;          /* count of captures of this meter */
     char name[SM_NAME_SIZE]; /* item's, or "capture 17" */
     double value;
     enum sm_unit unit;
     struct sm_settled s;
-    double tolerance;     /* signal unit */
+    double tolerance; /* signal unit */
     size_t n_others;
     struct sm_other_mean other[SM_OTHERS_MAX];
     char who[SM_NAME_SIZE]; /* on duty */
@@ -98,7 +111,8 @@ struct sm_event_result {
     char temperature_how[16]; /* "measured", "typed", "assumed" */
     char shown[24];           /* "< 1.68", "> 10.07" or "" */
     enum sm_result_state state;
-    char why[SM_REASON_SIZE]; /* held: why and what would release it; provisional: what it waits for */
+    char why[SM_REASON_SIZE]; /* held: why and what would release it; provisional: what it waits for
+                               */
     size_t n_remarks;
     char remark[4][SM_REASON_SIZE];
 };
@@ -139,7 +153,7 @@ struct sm_event_transit {
 };
 
 struct sm_event_unread {
-    bool counted;                /* true: a count of those passed over, no line */
+    bool counted; /* true: a count of those passed over, no line */
     uint64_t count;
     enum sm_line_kind kind;
     char line[SM_LINE_MAX];

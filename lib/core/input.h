@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* input.h: what the core is fed. Each is an entry of the bench log, numbered and appended by the shell
- * before the core sees it. */
+/* input.h: what the core is fed. Each is an entry of the bench log, numbered and appended by the
+ * shell before the core sees it. */
 #ifndef SM_CORE_INPUT_H
 #define SM_CORE_INPUT_H
 #include "bench/sheet.h"
@@ -24,10 +24,29 @@ enum sm_input_kind {
 const char *sm_input_kind_name(enum sm_input_kind k);
 
 enum sm_act_kind {
-    SM_ACT_SHEET, SM_ACT_NEXT, SM_ACT_REDO, SM_ACT_SKIP, SM_ACT_TAKE, SM_ACT_VOID, SM_ACT_NAME,
-    SM_ACT_NOTE, SM_ACT_CONFIRM, SM_ACT_INSERT, SM_ACT_PAUSE, SM_ACT_RESUME, SM_ACT_TEMPERATURE,
-    SM_ACT_ANALYST, SM_ACT_AMEND, SM_ACT_DROP, SM_ACT_ACCEPT, SM_ACT_REORDER, SM_ACT_ENTER,
-    SM_ACT_SENSOR, SM_ACT_SIGN, SM_ACT_END, SM_ACT_COUNT
+    SM_ACT_SHEET,
+    SM_ACT_NEXT,
+    SM_ACT_REDO,
+    SM_ACT_SKIP,
+    SM_ACT_TAKE,
+    SM_ACT_VOID,
+    SM_ACT_NAME,
+    SM_ACT_NOTE,
+    SM_ACT_CONFIRM,
+    SM_ACT_INSERT,
+    SM_ACT_PAUSE,
+    SM_ACT_RESUME,
+    SM_ACT_TEMPERATURE,
+    SM_ACT_ANALYST,
+    SM_ACT_AMEND,
+    SM_ACT_DROP,
+    SM_ACT_ACCEPT,
+    SM_ACT_REORDER,
+    SM_ACT_ENTER,
+    SM_ACT_SENSOR,
+    SM_ACT_SIGN,
+    SM_ACT_END,
+    SM_ACT_COUNT
 };
 const char *sm_act_name(enum sm_act_kind a);
 bool sm_act_known(const char *name, enum sm_act_kind *ret_act);
@@ -35,11 +54,11 @@ bool sm_act_built(enum sm_act_kind a); /* false: known, answered "not possible y
 
 struct sm_act {
     enum sm_act_kind act;
-    char id[SM_ID_SIZE];     /* made by the sender; printable ASCII, 1 to 64 */
+    char id[SM_ID_SIZE]; /* made by the sender; printable ASCII, 1 to 64 */
     bool has_seen;
-    int64_t seen;            /* n of the newest durable entry its sender had seen */
-    char who[SM_NAME_SIZE];  /* claimed; "" not stated */
-    char door[16];           /* "socket", "page", … */
+    int64_t seen;           /* n of the newest durable entry its sender had seen */
+    char who[SM_NAME_SIZE]; /* claimed; "" not stated */
+    char door[16];          /* "socket", "page", … */
     bool has_uid;
     int64_t uid;             /* peer */
     char why[SM_NOTE_SIZE];  /* skip, end …: the reason; "" none */
@@ -47,8 +66,9 @@ struct sm_act {
     bool has_temperature;
     double temperature_c;
     bool has_subject;
-    int64_t subject;         /* n of the entry it is about (void, take …) */
-    /* SHEET: the typed sheet, lent during the feed; NULL: its text was refused, sheet_why says why */
+    int64_t subject; /* n of the entry it is about (void, take …) */
+    /* SHEET: the typed sheet, lent during the feed; NULL: its text was refused, sheet_why says why
+     */
     const struct sm_sheet *sheet;
     char sheet_file[SM_NAME_SIZE];
     char sheet_why[SM_LINK_TEXT_SIZE];
@@ -62,8 +82,8 @@ const char *sm_link_state_name(enum sm_link_state s); /* "up", "lost", "refused"
 struct sm_link {
     enum sm_link_state state;
     char why[SM_LINK_TEXT_SIZE];      /* in words */
-    char port[256];     /* as set up */
-    char device[256];   /* what it resolved to */
+    char port[256];                   /* as set up */
+    char device[256];                 /* what it resolved to */
     char identity[SM_LINK_TEXT_SIZE]; /* of the adapter: USB ids and serial number; "" unknown */
     char settings[SM_LINK_TEXT_SIZE]; /* as read back: "9600 8N1, no flow control" and mismatches */
 };
@@ -73,13 +93,13 @@ const char *sm_clock_what_name(enum sm_clock_what w); /* "jump", "suspend" */
 
 struct sm_input {
     enum sm_input_kind kind;
-    int64_t n;      /* number of the entry */
-    int64_t t_ns;   /* since the file was opened, never earlier than the one before */
+    int64_t n;    /* number of the entry */
+    int64_t t_ns; /* since the file was opened, never earlier than the one before */
     int64_t utc_us;
     /* BYTES: t_ns in chunk equals the input's */
     struct sm_chunk chunk;
-    struct sm_act act;   /* ACT */
-    struct sm_link link; /* LINK */
+    struct sm_act act;             /* ACT */
+    struct sm_link link;           /* LINK */
     enum sm_clock_what clock_what; /* CLOCK */
     int64_t clock_by_us;           /* CLOCK: forward positive; SUSPEND: how long */
     int64_t sent_of;               /* SENT: n of the `ask` */
