@@ -24,10 +24,11 @@ const char *sm_flag_name(enum sm_flag f); /* "ok", "over", … */
 struct sm_value {
     bool present; /* this line carried the channel */
     enum sm_flag flag;
-    double value;                /* in the channel's unit; meaningless unless flag is OK, or OPEN by
-                                  * `plausible` */
-    double step;                 /* display step implied by the digits; 0 unknown */
-    char digits[SM_DIGITS_SIZE]; /* the meter's own, as sent */
+    double value; /* in the channel's unit; NaN where the line has no number (a word);
+                   * to be used only where flag is OK */
+    double step;  /* display step implied by the digits; 0 unknown */
+    char digits[SM_DIGITS_SIZE]; /* the meter's own number or word, as sent, a sign set apart in
+                                    front */
 };
 
 struct sm_reading {
