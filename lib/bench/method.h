@@ -46,6 +46,7 @@ struct sm_method {
     char name[SM_NAME_SIZE];
     enum sm_unit measures;        /* unit of results */
     char signal[SM_CHANNEL_SIZE]; /* the channel that must settle */
+    enum sm_unit signal_unit;     /* its unit: tolerance, residual SD and offset are in it */
     enum sm_temperature_from temperature_from;
     char temperature[SM_CHANNEL_SIZE]; /* CHANNEL */
     double assumed_c;                  /* ASSUMED, °C */
