@@ -42,13 +42,14 @@ struct sm_curve {
     struct sm_coefficient coefficient[SM_COEFFICIENTS_MAX]; /* rising power of x */
     double covariance[SM_COEFFICIENTS_MAX][SM_COEFFICIENTS_MAX];
     double residual_sd; /* of y; dof > 0 */
-    double r_squared;   /* uncentred for PROPORTIONAL */
+    double r_squared;   /* uncentred for PROPORTIONAL; NaN where all y are alike */
     double x_from, x_to; /* lowest and highest standard */
-    double x_mean, sxx;  /* centred sums of the fit */
+    double x_mean, sxx;  /* mean of x and sum of (x - x_mean)^2. PROPORTIONAL: 0 and sum of x^2;
+                          * NERNST: of the pH that each standard would have at t_c */
     /* NERNST only */
     double slope_fraction; /* s: 1 = theory */
     double offset_mv;      /* E at pH 7.00 and t_c */
-    double zero_point;     /* pH at 0 mV and t_c */
+    double zero_point;     /* pH at 0 mV and t_c; NaN for a flat line */
     double ph_iso, e_iso;  /* isopotential point */
     double t_c;            /* mean temperature of the standards */
 };
@@ -72,8 +73,10 @@ struct sm_point {
  * Allocates for the time of the call (a curve is fitted once per set of standards).
  *   SM_ESHORT  fewer points, or fewer distinct x, than coefficients + 1 (equal numbers fit without
  *              statistics are refused too)
- *   SM_EVALUE  a point that is not finite
- *   SM_EINVAL  a model that is not built */
+ *   SM_EVALUE  a point that is not finite, or numbers too far apart for a double
+ *   SM_EINVAL  a model that is not built
+ *   SM_EFULL   more than SM_FIT_POINTS_MAX
+ *   SM_ENOMEM  no memory */
 SM_MUST_CHECK enum sm_status sm_curve_fit(enum sm_model m, const struct sm_point *p, size_t n,
                                           double ph_iso, struct sm_curve *ret_curve);
 
@@ -88,16 +91,18 @@ struct sm_read_off {
 };
 
 /* x for a mean y of m replicates (NERNST: at t_c).
- *   SM_EVALUE  no x, or no single one within reach, gives this y */
+ *   SM_EVALUE  no x, or no single one within reach, gives this y. QUADRATIC: within reach is what lies
+ *              between the standards, else what lies on their side of the turning point
+ *   SM_EINVAL  m is 0 */
 SM_MUST_CHECK enum sm_status sm_curve_read(const struct sm_curve *c, double y, unsigned m, double t_c,
                                            struct sm_read_off *ret_read);
 
-/* Line against quadratic at 99 % (Mandel): for LINE and NERNST. has = false where it cannot be
- * computed. */
+/* Line against quadratic at 99 % (Mandel): for LINE and NERNST, from four points at three levels up.
+ * has = false where it cannot be computed; so too where the points lie on the line to the last digit. */
 void sm_curve_linearity(enum sm_model m, const struct sm_point *p, size_t n, double ph_iso,
                         struct sm_linearity *ret_linearity);
 
-/* Number of distinct x among p[n]. */
+/* Number of distinct x among p[n]. Above SM_POINTS_MAX it allocates; 0: no memory. */
 size_t sm_curve_levels(const struct sm_point *p, size_t n);
 
 /* Student's t, two-sided at 95 %; dof >= 1. */

@@ -1,0 +1,577 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* test_curve.c: fits and readings against published values and against the theory of the electrode.
+ * The sources are named in the files of tests/reference/ from which the values are read. */
+#include "curve/curve.h"
+
+#include <math.h>
+#include <string.h>
+
+#include <gsl/gsl_errno.h>
+
+#include "check.h"
+#include "reference/reference.h"
+
+static size_t load(const char *file, struct sm_point p[SM_POINTS_MAX])
+{
+    double x[SM_POINTS_MAX], y[SM_POINTS_MAX];
+    const size_t n = reference_pairs(file, SM_POINTS_MAX, x, y);
+
+    for (size_t i = 0; i < n; i++)
+        p[i] = (struct sm_point){ x[i], y[i], 0 };
+    return n;
+}
+
+static struct sm_curve fitted(enum sm_model m, const struct sm_point *p, size_t n)
+{
+    struct sm_curve c;
+    const enum sm_status status = sm_curve_fit(m, p, n, 7, &c);
+
+    if (status != SM_OK)
+        fail_msg("fit of %s to %zu points: status %d", sm_model_name(m), n, status);
+    return c;
+}
+
+static void every_model_is_known_by_its_name(void **state)
+{
+    enum sm_model got = SM_MODEL_COUNT;
+
+    (void)state;
+    for (size_t i = 0; i < SM_MODEL_COUNT; i++) {
+        assert_true(sm_model_known(sm_model_name((enum sm_model)i), &got));
+        assert_int_equal(got, i);
+    }
+    assert_false(sm_model_known("cubic", &got));
+    assert_int_equal(got, SM_MODEL_COUNT - 1);
+    assert_string_equal(sm_model_name(SM_MODEL_LOG_LINE), "log-line");
+    assert_true(sm_model_built(SM_MODEL_NERNST));
+    assert_false(sm_model_built(SM_MODEL_LOG_OFFSET));
+    assert_false(sm_model_built(SM_MODEL_COUNT));
+    assert_int_equal(sm_model_coefficients(SM_MODEL_QUADRATIC), 3);
+    assert_int_equal(sm_model_coefficients(SM_MODEL_PROPORTIONAL), 1);
+}
+
+static void the_nernst_slope_agrees_with_the_recomputed_table(void **state)
+{
+    double t_c[64], want[64];
+    const size_t n = reference_pairs("nernst_slope.csv", 64, t_c, want);
+
+    (void)state;
+    assert_int_equal(n, 24);
+    for (size_t i = 0; i < n; i++)
+        check_close("mV per pH", sm_nernst_mv(t_c[i]), want[i], 0.51e-10);
+}
+
+/* NIST StRD: Norris, Pontius, NoInt1. */
+static void nist_certified_values_come_back_to_eleven_digits(void **state)
+{
+    static const struct {
+        const char *set, *file;
+        enum sm_model model;
+        size_t first, n; /* B0 or B1 first; coefficients */
+    } cases[] = { { "norris", "nist_norris.csv", SM_MODEL_LINE, 0, 2 },
+                  { "pontius", "nist_pontius.csv", SM_MODEL_QUADRATIC, 0, 3 },
+                  { "noint1", "nist_noint1.csv", SM_MODEL_PROPORTIONAL, 1, 1 } };
+    static const char *const names[] = { "B0", "B1", "B2" };
+    const char *const file = "nist_certified.csv";
+
+    (void)state;
+    for (size_t i = 0; i < COUNT(cases); i++) {
+        struct sm_point p[SM_POINTS_MAX];
+        const size_t n = load(cases[i].file, p);
+        const struct sm_curve c = fitted(cases[i].model, p, n);
+        char what[64];
+        assert_int_equal(c.n_coefficients, cases[i].n);
+        for (size_t k = 0; k < c.n_coefficients; k++) {
+            const char *name = names[cases[i].first + k];
+            snprintf(what, sizeof what, "%s %s", cases[i].set, name);
+            check_digits(what, c.coefficient[k].value,
+                         reference_value(file, cases[i].set, name, "certified"), 11);
+            snprintf(what, sizeof what, "sd_%s", name);
+            check_digits(what, c.coefficient[k].standard_error,
+                         reference_value(file, cases[i].set, what, "certified"), 11);
+            check_digits("variance", c.covariance[k][k], pow(c.coefficient[k].standard_error, 2),
+                         14);
+        }
+        check_digits("residual SD", c.residual_sd,
+                     reference_value(file, cases[i].set, "residual_sd", "certified"), 11);
+        check_digits("R squared", c.r_squared,
+                     reference_value(file, cases[i].set, "r_squared", "certified"), 13);
+        check_close("dof", (double)c.dof, reference_value(file, cases[i].set, "df", "certified"),
+                    0);
+    }
+}
+
+/* Exact covariance: reference README, trap (b) of the NIST sets, there recomputed in exact
+ * fractions. */
+static void the_covariance_of_norris_is_the_exact_one(void **state)
+{
+    struct sm_point p[SM_POINTS_MAX];
+    const size_t n = load("nist_norris.csv", p);
+    const struct sm_curve c = fitted(SM_MODEL_LINE, p, n);
+
+    (void)state;
+    check_digits("covariance", c.covariance[0][1],
+                 reference_value("nist_certified.csv", "norris", "cov_B0_B1", "recomputed"), 11);
+    assert_true(c.covariance[0][1] == c.covariance[1][0]);
+    assert_int_equal(c.levels, 35); /* 36 points, of which 0.3 twice */
+}
+
+/* Miller and Miller, Statistics and Chemometrics for Analytical Chemistry, chapter 5: fluorescein.
+ */
+static void fluorescein_reads_back_with_the_textbook_uncertainty(void **state)
+{
+    static const struct {
+        double y;
+        unsigned m;
+        const char *x, *u;
+    } cases[] = { { 2.9, 1, "x0(y0=2.9)", "s_x0(y0=2.9; m=1)" },
+                  { 2.9, 4, "x0(y0=2.9)", "s_x0(y0=2.9; m=4)" },
+                  { 13.5, 1, "x0(y0=13.5)", "s_x0(y0=13.5; m=1)" },
+                  { 13.5, 6, "x0(y0=13.5) as read", "s_x0(y0=13.5; m=6) as read" },
+                  { 23.0, 1, "x0(y0=23.0)", "s_x0(y0=23.0; m=1)" },
+                  { 23.0, 4, "x0(y0=23.0)", "s_x0(y0=23.0; m=4)" } };
+    static const char *const quantities[] = { "intercept", "slope",       "sd_intercept",
+                                              "sd_slope",  "residual_sd", "r_squared" };
+    const char *const file = "cal_results.csv", *const set = "fluorescein";
+    struct sm_point p[SM_POINTS_MAX];
+    const size_t n = load("cal_fluorescein.csv", p);
+    const struct sm_curve c = fitted(SM_MODEL_LINE, p, n);
+    const double got[] = {
+        c.coefficient[0].value,          c.coefficient[1].value, c.coefficient[0].standard_error,
+        c.coefficient[1].standard_error, c.residual_sd,          c.r_squared
+    };
+
+    (void)state;
+    for (size_t i = 0; i < COUNT(got); i++)
+        check_digits(quantities[i], got[i], reference_value(file, set, quantities[i], "recomputed"),
+                     12);
+    check_close("slope as published", got[1], reference_value(file, set, "slope", "published"),
+                5e-5);
+    check_close("intercept as published", got[0],
+                reference_value(file, set, "intercept", "published"), 5e-5);
+    for (size_t i = 0; i < COUNT(cases); i++) {
+        struct sm_read_off r;
+        assert_int_equal(sm_curve_read(&c, cases[i].y, cases[i].m, 0, &r), SM_OK);
+        check_digits(cases[i].x, r.x, reference_value(file, set, cases[i].x, "recomputed"), 12);
+        check_digits(cases[i].u, r.standard_uncertainty,
+                     reference_value(file, set, cases[i].u, "recomputed"), 12);
+        check_close("as published", r.standard_uncertainty,
+                    reference_value(file, set, cases[i].u, "published"), 5.1e-3);
+        assert_true(r.between_standards);
+        const double reading = c.residual_sd / c.coefficient[1].value;
+        check_digits("curve and reading together",
+                     pow(r.curve_uncertainty, 2) + reading * reading / cases[i].m,
+                     pow(r.standard_uncertainty, 2), 13);
+    }
+}
+
+/* DIN 38402-51 examples B.1 (572 against 10.6) and B.6; fluorescein, and the same where it bends.
+ */
+static void mandels_test_gives_the_recomputed_statistic(void **state)
+{
+    static const struct {
+        const char *file, *set, *limit;
+        bool pass;
+    } cases[] = {
+        { "cal_din38402_b1.csv", "din38402_b1", "F(0.99;1;9)", false },
+        { "cal_din38402_b6.csv", "din38402_b6", "F(0.99;1;9)", false },
+        { "cal_fluorescein.csv", "fluorescein", "F(0.99;1;4)", true },
+        { "cal_fluorescein_extended.csv", "fluorescein_extended", "F(0.99;1;8)", false },
+    };
+    const char *const file = "cal_results.csv";
+
+    (void)state;
+    for (size_t i = 0; i < COUNT(cases); i++) {
+        struct sm_point p[SM_POINTS_MAX];
+        struct sm_linearity l;
+        const size_t n = load(cases[i].file, p);
+        sm_curve_linearity(SM_MODEL_LINE, p, n, 7, &l);
+        assert_true(l.has);
+        check_digits(cases[i].set, l.statistic,
+                     reference_value(file, cases[i].set, "mandel_test_value", "recomputed"), 10);
+        check_digits(cases[i].limit, l.critical,
+                     reference_value(file, cases[i].set, cases[i].limit, "recomputed"), 10);
+        assert_int_equal(l.pass, cases[i].pass);
+        assert_int_equal(l.p > 0.01, cases[i].pass);
+    }
+}
+
+static void the_quadratic_of_din_38402_b1_is_the_recomputed_one(void **state)
+{
+    static const double want[] = { 0.000847713108866, 0.00669148572613, 1.65839565804e-5 };
+    struct sm_point p[SM_POINTS_MAX];
+    const size_t n = load("cal_din38402_b1.csv", p);
+    const struct sm_curve c = fitted(SM_MODEL_QUADRATIC, p, n);
+    char text[REFERENCE_LINE];
+
+    (void)state;
+    reference_text("cal_results.csv", "din38402_b1", "quadratic c0 c1 c2", "recomputed", text);
+    assert_string_equal(text, "0.000847713108866 0.00669148572613 1.65839565804e-5");
+    for (size_t k = 0; k < 3; k++)
+        check_digits("c", c.coefficient[k].value, want[k], 11);
+    check_digits(
+        "residual SD", c.residual_sd,
+        reference_value("cal_results.csv", "din38402_b1", "quadratic_residual_sd", "recomputed"),
+        11);
+}
+
+static void quantiles_of_t_and_f_agree_with_the_tables(void **state)
+{
+    double df[64], unused[64];
+    const size_t n = reference_pairs("t_critical.csv", 64, df, unused);
+
+    (void)state;
+    assert_true(n > 30);
+    for (size_t i = 0; i < n; i++) {
+        char row[16];
+        snprintf(row, sizeof row, "%.0f", df[i]);
+        check_digits(row, sm_t95((size_t)df[i]),
+                     reference_value("t_critical.csv", row, NULL, "p0.975"), 10);
+    }
+    for (size_t nu = 1; nu <= 20; nu++) { /* the limit that Mandel's test uses */
+        struct sm_point p[SM_POINTS_MAX];
+        struct sm_linearity l;
+        char row[16];
+        for (size_t i = 0; i < nu + 3; i++)
+            p[i] = (struct sm_point){ (double)i, (double)i + (i % 3 == 1 ? 0.01 : 0), 0 };
+        sm_curve_linearity(SM_MODEL_LINE, p, nu + 3, 7, &l);
+        snprintf(row, sizeof row, "%zu", nu);
+        check_digits(row, l.critical, reference_value("f_critical.csv", "0.99", row, "nu1_1"), 9);
+    }
+}
+
+/* Electrode: E = Eiso - s kN(t) (pH - pHiso), made here with s = 0.975, Eiso = 11 mV, pHiso = 6.8.
+ */
+static const struct sm_curve *electrode(void)
+{
+    static struct sm_curve c;
+    static const double ph[] = { 1.68, 4.0, 6.88, 9.22, 10.07 },
+                        t_c[] = { 18.2, 21.9, 20, 24.5, 19.4 };
+    struct sm_point p[5];
+
+    for (size_t i = 0; i < 5; i++)
+        p[i] =
+            (struct sm_point){ ph[i], 11 - 0.975 * sm_nernst_mv(t_c[i]) * (ph[i] - 6.8), t_c[i] };
+    assert_int_equal(sm_curve_fit(SM_MODEL_NERNST, p, 5, 6.8, &c), SM_OK);
+    return &c;
+}
+
+static void an_electrode_at_several_temperatures_is_found_again(void **state)
+{
+    const struct sm_curve *c = electrode();
+    const double k = sm_nernst_mv(20.8);
+
+    (void)state;
+    check_close("s", c->slope_fraction, 0.975, 1e-13);
+    check_close("Eiso", c->e_iso, 11, 1e-11);
+    check_close("mean temperature", c->t_c, 20.8, 1e-12);
+    check_close("slope", c->coefficient[1].value, -0.975 * k, 1e-11);
+    check_close("intercept", c->coefficient[0].value, 11 + 0.975 * k * 6.8, 1e-10);
+    check_close("offset", c->offset_mv, 11 - 0.975 * k * 0.2, 1e-10);
+    check_close("zero point", c->zero_point, 6.8 + 11 / (0.975 * k), 1e-12);
+    check_close("R squared", c->r_squared, 1, 1e-14);
+    assert_int_equal(c->levels, 5);
+    assert_string_equal(c->coefficient[0].name, "intercept");
+    assert_string_equal(c->coefficient[1].name, "slope");
+}
+
+static void a_sample_is_read_at_its_own_temperature(void **state)
+{
+    static const struct {
+        double ph, t_c;
+        bool between;
+    } cases[] = { { 8.12, 10.8, true }, { 6.8, 35, true },    { 1.7, 20.8, true },
+                  { 10.05, 5, true },   { 1.0, 20.8, false }, { 12, 25, false } };
+    const struct sm_curve *c = electrode();
+    struct sm_read_off r;
+
+    (void)state;
+    for (size_t i = 0; i < COUNT(cases); i++) {
+        const double mv = 11 - 0.975 * sm_nernst_mv(cases[i].t_c) * (cases[i].ph - 6.8);
+        check_close("mV", sm_curve_y(c, cases[i].ph, cases[i].t_c), mv, 1e-10);
+        assert_int_equal(sm_curve_read(c, mv, 1, cases[i].t_c, &r), SM_OK);
+        check_close("pH", r.x, cases[i].ph, 1e-12);
+        assert_int_equal(r.between_standards, cases[i].between);
+    }
+    assert_int_equal(sm_curve_read(c, 0, 1, NAN, &r), SM_EVALUE);
+    assert_int_equal(sm_curve_read(c, 0, 1, -300, &r), SM_EVALUE);
+}
+
+/* Where all temperatures are alike nernst is the plain line, whatever the isopotential point. */
+static void at_one_temperature_nernst_is_the_plain_line(void **state)
+{
+    struct sm_point p[] = { { 1.68, 305.2, 20 },  { 4, 171.9, 20 },      { 6.88, 8.1, 20 },
+                            { 9.22, -127.3, 20 }, { 10.07, -177.4, 20 }, { 4, 172.6, 20 } };
+    const struct sm_curve line = fitted(SM_MODEL_LINE, p, COUNT(p));
+    struct sm_linearity l, ln;
+
+    (void)state;
+    sm_curve_linearity(SM_MODEL_LINE, p, COUNT(p), 7, &l);
+    for (double iso = 6.5; iso < 7.6; iso += 0.5) {
+        struct sm_curve c;
+        struct sm_read_off want, got;
+        assert_int_equal(sm_curve_fit(SM_MODEL_NERNST, p, COUNT(p), iso, &c), SM_OK);
+        for (size_t i = 0; i < 2; i++) {
+            check_digits("coefficient", c.coefficient[i].value, line.coefficient[i].value, 12);
+            check_digits("standard error", c.coefficient[i].standard_error,
+                         line.coefficient[i].standard_error, 11);
+            for (size_t j = 0; j < 2; j++)
+                check_digits("covariance", c.covariance[i][j], line.covariance[i][j], 11);
+        }
+        check_digits("residual SD", c.residual_sd, line.residual_sd, 11);
+        check_digits("R squared", c.r_squared, line.r_squared, 14);
+        check_digits("Sxx", c.sxx, line.sxx, 13);
+        check_digits("mean x", c.x_mean, line.x_mean, 13);
+        assert_int_equal(c.levels, 5);
+        for (double mv = -170; mv < 300; mv += 31.7) {
+            assert_int_equal(sm_curve_read(&line, mv, 3, 0, &want), SM_OK);
+            assert_int_equal(sm_curve_read(&c, mv, 3, 20, &got), SM_OK);
+            check_digits("pH", got.x, want.x, 12);
+            check_digits("u", got.standard_uncertainty, want.standard_uncertainty, 11);
+            check_digits("u of the curve", got.curve_uncertainty, want.curve_uncertainty, 10);
+        }
+        sm_curve_linearity(SM_MODEL_NERNST, p, COUNT(p), iso, &ln);
+        assert_true(l.has && ln.has);
+        check_digits("Mandel", ln.statistic, l.statistic, 8);
+    }
+}
+
+/* 1, 2 … 6 in y = 1 + 6 x - x^2 / 2, which turns at x = 6, and with more bend inside the standards.
+ */
+static void a_quadratic_gives_only_an_x_that_is_the_one(void **state)
+{
+    static const struct {
+        const char *name;
+        double bend, y, x; /* y = 1 + 6 x - bend x^2 */
+        enum sm_status status;
+        bool between;
+    } cases[] = {
+        { "between the standards", 0.5, 14.5, 3, SM_OK, true },
+        { "at the lowest, nearly", 0.5, 6.5001, 1.00002000004, SM_OK, true },
+        { "below the lowest", 0.5, 1, 0, SM_OK, false },
+        { "over the top", 0.5, 19.5, 0, SM_EVALUE, false },
+        { "two between the standards", 1, 9.0, 0, SM_EVALUE, false },
+        { "one between, its twin beyond", 0.75, 10, 2, SM_OK, true },
+        { "one either side, both beyond", 1, -6, 0, SM_EVALUE, false },
+        { "bending upwards", -0.5, 23.5, 3, SM_OK, true },
+        { "bending upwards, above", -0.5, 61.5, 6.529964086141668, SM_OK, false },
+        { "never so low", -0.5, -100, 0, SM_EVALUE, false },
+        { "not a number", 0.5, NAN, 0, SM_EVALUE, false },
+    };
+
+    (void)state;
+    for (size_t i = 0; i < COUNT(cases); i++) {
+        struct sm_point p[5];
+        for (size_t k = 0; k < 5; k++) {
+            const double x = 1 + (double)k; /* 1 … 5 */
+            p[k] = (struct sm_point){ x, 1 + 6 * x - cases[i].bend * x * x, 0 };
+        }
+        const struct sm_curve c = fitted(SM_MODEL_QUADRATIC, p, 5);
+        struct sm_read_off r = { .x = 99 };
+        const enum sm_status got = sm_curve_read(&c, cases[i].y, 1, 0, &r);
+        if (got != cases[i].status)
+            fail_msg("%s: status %d, want %d (x %g)", cases[i].name, got, cases[i].status, r.x);
+        if (got != SM_OK) {
+            check_close("untouched", r.x, 99, 0);
+            continue;
+        }
+        check_close(cases[i].name, r.x, cases[i].x, 1e-10);
+        assert_int_equal(r.between_standards, cases[i].between);
+    }
+}
+
+static void what_cannot_be_fitted_is_refused_and_changes_nothing(void **state)
+{
+    static struct sm_point many[SM_FIT_POINTS_MAX + 1];
+    static const struct {
+        const char *name;
+        enum sm_model model;
+        struct sm_point p[6];
+        size_t n;
+        enum sm_status want;
+    } cases[] = {
+        { "no points", SM_MODEL_LINE, { { 0, 0, 0 } }, 0, SM_ESHORT },
+        { "two for a line", SM_MODEL_LINE, { { 1, 1, 0 }, { 2, 3, 0 } }, 2, SM_ESHORT },
+        { "two levels for a line",
+          SM_MODEL_LINE,
+          { { 1, 1, 0 }, { 2, 3, 0 }, { 1, 1.1, 0 }, { 2, 3.1, 0 } },
+          4,
+          SM_ESHORT },
+        { "three levels for a quadratic",
+          SM_MODEL_QUADRATIC,
+          { { 1, 1, 0 }, { 2, 3, 0 }, { 3, 4, 0 }, { 3, 4.2, 0 } },
+          4,
+          SM_ESHORT },
+        { "one level through zero",
+          SM_MODEL_PROPORTIONAL,
+          { { 2, 1, 0 }, { 2, 1.1, 0 }, { 2, 1.2, 0 } },
+          3,
+          SM_ESHORT },
+        { "x not a number",
+          SM_MODEL_LINE,
+          { { 1, 1, 0 }, { NAN, 3, 0 }, { 3, 4, 0 } },
+          3,
+          SM_EVALUE },
+        { "y infinite",
+          SM_MODEL_LINE,
+          { { 1, 1, 0 }, { 2, INFINITY, 0 }, { 3, 4, 0 } },
+          3,
+          SM_EVALUE },
+        { "x beyond a double's range",
+          SM_MODEL_LINE,
+          { { -1.7e308, 1, 0 }, { 1.7e308, 2, 0 }, { 1.6e308, 4, 0 } },
+          3,
+          SM_EVALUE },
+        { "temperature not known",
+          SM_MODEL_NERNST,
+          { { 4, 171, 20 }, { 7, 1, NAN }, { 10, -170, 20 } },
+          3,
+          SM_EVALUE },
+        { "below absolute zero",
+          SM_MODEL_NERNST,
+          { { 4, 171, 20 }, { 7, 1, -274 }, { 10, -170, 20 } },
+          3,
+          SM_EVALUE },
+        { "not built", SM_MODEL_LOG_LINE, { { 1, 1, 0 }, { 2, 3, 0 }, { 3, 4, 0 } }, 3, SM_EINVAL },
+        { "no model", SM_MODEL_COUNT, { { 1, 1, 0 }, { 2, 3, 0 }, { 3, 4, 0 } }, 3, SM_EINVAL },
+    };
+    struct sm_curve c, before;
+
+    (void)state;
+    memset(&before, 0x5a, sizeof before);
+    for (size_t i = 0; i < COUNT(cases); i++) {
+        memcpy(&c, &before, sizeof c);
+        const enum sm_status got = sm_curve_fit(cases[i].model, cases[i].p, cases[i].n, 7, &c);
+        if (got != cases[i].want || memcmp(&c, &before, sizeof c) != 0)
+            fail_msg("%s: status %d, want %d", cases[i].name, got, cases[i].want);
+    }
+    assert_int_equal(sm_curve_fit(SM_MODEL_LINE, many, COUNT(many), 7, &c), SM_EFULL);
+    assert_int_equal(sm_curve_fit(SM_MODEL_NERNST, cases[8].p, 3, NAN, &c), SM_EINVAL);
+}
+
+static void equal_readings_give_a_flat_line_that_reads_nothing(void **state)
+{
+    const struct sm_point p[] = {
+        { 0.1, 0.3, 20 }, { 0.2, 0.3, 20 }, { 0.7, 0.3, 20 }, { 1.9, 0.3, 20 }
+    };
+    const struct sm_curve c = fitted(SM_MODEL_LINE, p, COUNT(p));
+    const struct sm_curve e = fitted(SM_MODEL_NERNST, p, COUNT(p));
+    struct sm_read_off r;
+    struct sm_linearity l;
+
+    (void)state;
+    assert_true(c.coefficient[1].value == 0);
+    check_close("intercept", c.coefficient[0].value, 0.3, 1e-15);
+    assert_true(isnan(c.r_squared)); /* unknown, not 0 */
+    assert_true(isnan(e.zero_point));
+    assert_int_equal(sm_curve_read(&c, 0.3, 1, 0, &r), SM_EVALUE);
+    assert_int_equal(sm_curve_read(&e, 0.3, 1, 20, &r), SM_EVALUE);
+    sm_curve_linearity(SM_MODEL_LINE, p, COUNT(p), 7, &l);
+    assert_false(l.has);
+}
+
+static void linearity_is_left_out_where_it_cannot_be_computed(void **state)
+{
+    static const struct {
+        const char *name;
+        enum sm_model model;
+        struct sm_point p[6];
+        size_t n;
+        bool has, pass;
+    } cases[] = {
+        { "three points",
+          SM_MODEL_LINE,
+          { { 1, 1, 0 }, { 2, 3, 0 }, { 3, 4, 0 } },
+          3,
+          false,
+          false },
+        { "two levels",
+          SM_MODEL_LINE,
+          { { 1, 1, 0 }, { 2, 3, 0 }, { 1, 1.1, 0 }, { 2, 3.1, 0 } },
+          4,
+          false,
+          false },
+        { "three levels, one twice",
+          SM_MODEL_LINE,
+          { { 1, 1, 0 }, { 2, 3, 0 }, { 3, 4.5, 0 }, { 3, 4.6, 0 } },
+          4,
+          true,
+          true },
+        { "on the line to the last digit",
+          SM_MODEL_LINE,
+          { { 0.1, 0.3, 0 }, { 0.2, 0.6, 0 }, { 0.3, 0.9, 0 }, { 0.7, 2.1, 0 } },
+          4,
+          false,
+          false },
+        { "on a parabola to the last digit",
+          SM_MODEL_LINE,
+          { { 1, 1, 0 }, { 2, 4, 0 }, { 3, 9, 0 }, { 4, 16, 0 }, { 5, 25, 0 } },
+          5,
+          true,
+          false },
+        { "another model",
+          SM_MODEL_PROPORTIONAL,
+          { { 1, 1, 0 }, { 2, 3, 0 }, { 3, 4, 0 }, { 4, 6, 0 } },
+          4,
+          false,
+          false },
+    };
+
+    (void)state;
+    for (size_t i = 0; i < COUNT(cases); i++) {
+        struct sm_linearity l;
+        sm_curve_linearity(cases[i].model, cases[i].p, cases[i].n, 7, &l);
+        if (l.has != cases[i].has || l.pass != cases[i].pass)
+            fail_msg("%s: has %d pass %d (statistic %g)", cases[i].name, l.has, l.pass,
+                     l.statistic);
+        assert_string_equal(l.test, "mandel");
+    }
+}
+
+static void levels_count_distinct_values_whatever_their_order(void **state)
+{
+    static struct sm_point many[SM_FIT_POINTS_MAX];
+    const struct sm_point p[] = {
+        { 4, 0, 0 }, { 7, 0, 0 }, { 4, 1, 0 }, { -0.0, 0, 0 }, { 0.0, 0, 0 }
+    };
+
+    (void)state;
+    assert_int_equal(sm_curve_levels(p, COUNT(p)), 3);
+    assert_int_equal(sm_curve_levels(p, 0), 0);
+    for (size_t i = 0; i < COUNT(many); i++)
+        many[i].x = (double)((i * 7919) % 5003);
+    assert_int_equal(sm_curve_levels(many, COUNT(many)), 5003);
+}
+
+static void replicates_of_no_reading_are_refused(void **state)
+{
+    struct sm_read_off r;
+
+    (void)state;
+    assert_int_equal(sm_curve_read(electrode(), 1, 0, 20, &r), SM_EINVAL);
+}
+
+int main(void)
+{
+    const struct CMUnitTest tests[] = {
+        cmocka_unit_test(every_model_is_known_by_its_name),
+        cmocka_unit_test(the_nernst_slope_agrees_with_the_recomputed_table),
+        cmocka_unit_test(nist_certified_values_come_back_to_eleven_digits),
+        cmocka_unit_test(the_covariance_of_norris_is_the_exact_one),
+        cmocka_unit_test(fluorescein_reads_back_with_the_textbook_uncertainty),
+        cmocka_unit_test(mandels_test_gives_the_recomputed_statistic),
+        cmocka_unit_test(the_quadratic_of_din_38402_b1_is_the_recomputed_one),
+        cmocka_unit_test(quantiles_of_t_and_f_agree_with_the_tables),
+        cmocka_unit_test(an_electrode_at_several_temperatures_is_found_again),
+        cmocka_unit_test(a_sample_is_read_at_its_own_temperature),
+        cmocka_unit_test(at_one_temperature_nernst_is_the_plain_line),
+        cmocka_unit_test(a_quadratic_gives_only_an_x_that_is_the_one),
+        cmocka_unit_test(what_cannot_be_fitted_is_refused_and_changes_nothing),
+        cmocka_unit_test(equal_readings_give_a_flat_line_that_reads_nothing),
+        cmocka_unit_test(linearity_is_left_out_where_it_cannot_be_computed),
+        cmocka_unit_test(levels_count_distinct_values_whatever_their_order),
+        cmocka_unit_test(replicates_of_no_reading_are_refused),
+    };
+    gsl_set_error_handler_off();
+    return cmocka_run_group_tests(tests, NULL, NULL);
+}
