@@ -296,8 +296,7 @@ static bool is_like_a_value(const char *name)
 {
     static const char *const none[] = { "nan", "inf", "infinity", "na", "n/a", "null", "none" };
 
-    if (*name == '+' || *name == '-' || *name == '.' || *name == '#')
-        name++;
+    name += strspn(name, "+-.#");
     return *name == '\0' || (*name >= '0' && *name <= '9') ||
            is_any_of(name, none, sizeof none / sizeof none[0]);
 }
@@ -342,6 +341,7 @@ enum sm_status sm_csv_begin(struct sm_csv *c, const char *text, size_t n,
     while (c->at < n && (text[c->at] == '#' || is_blank_line(c)))
         skip_line(c);
     if (c->at == n) {
+        c->line = c->next_line;
         say(ret_why, "no rows");
         return SM_ESYNTAX;
     }
