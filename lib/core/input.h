@@ -81,6 +81,7 @@ const char *sm_link_state_name(enum sm_link_state s); /* "up", "lost", "refused"
 
 struct sm_link {
     enum sm_link_state state;
+    bool continues; /* UP: the port stayed open over a change of file: no line is cut */
     char why[SM_LINK_TEXT_SIZE];      /* in words */
     char port[256];                   /* as set up */
     char device[256];                 /* what it resolved to */

@@ -1,0 +1,431 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* measured.c: what a capture becomes: a point of the curve, a check's verdict, a result. */
+#include "core/inside.h"
+
+#include <assert.h>
+#include <math.h>
+#include <string.h>
+
+#define K95 1.96 /* a capture's U95 over its standard uncertainty */
+
+/* Index among the signal's "other" channels of a channel of the profile. */
+static size_t other_of(const struct sm_core *c, int channel)
+{
+    return (size_t)(channel < c->signal_at ? channel : channel - 1);
+}
+
+/* The temperature that belongs to a capture; false: not known. */
+static bool temperature_of(const struct sm_core *c, const struct sm_settled *s, double *ret_c,
+                           const char **ret_how)
+{
+    switch (c->method->temperature_from) {
+    case SM_TEMPERATURE_CHANNEL:
+        if (c->temperature_at < 0 || !s->other_mean[other_of(c, c->temperature_at)].has)
+            return false;
+        *ret_c = s->other_mean[other_of(c, c->temperature_at)].value;
+        *ret_how = "measured";
+        return true;
+    case SM_TEMPERATURE_TYPED:
+        if (!c->now->temperature.has)
+            return false;
+        *ret_c = c->now->temperature.value_c;
+        *ret_how = "typed";
+        return true;
+    case SM_TEMPERATURE_ASSUMED:
+        *ret_c = c->method->assumed_c;
+        *ret_how = "assumed";
+        return true;
+    }
+    return false;
+}
+
+static void points_of(const struct sm_carried_curve *curve, struct sm_point *p)
+{
+    for (size_t i = 0; i < curve->n_points; i++) {
+        p[i].x = curve->point[i].x;
+        p[i].y = curve->point[i].y;
+        p[i].t_c = curve->point[i].t_c;
+    }
+}
+
+static double mean_u2_of(const struct sm_carried_curve *curve)
+{
+    double sum = 0;
+
+    for (size_t i = 0; i < curve->n_points; i++)
+        sum += (curve->point[i].u95_y / K95) * (curve->point[i].u95_y / K95);
+    return curve->n_points > 0 ? sum / (double)curve->n_points : 0;
+}
+
+void sm_core_refit(struct sm_core *c)
+{
+    struct sm_carried_curve *curve = &c->now->curve;
+    struct sm_point p[SM_POINTS_MAX];
+
+    points_of(curve, p);
+    c->curve_good =
+        sm_curve_fit(c->method->model, p, curve->n_points, c->method->ph_iso, &c->curve) == SM_OK;
+    c->mean_u2 = mean_u2_of(curve);
+}
+
+const struct sm_curve *sm_core_curve(const struct sm_core *c, char ret_why[SM_REASON_SIZE])
+{
+    const struct sm_carried_curve *curve = &c->now->curve;
+    const char *why = NULL;
+
+    if (!curve->has || curve->n == 0)
+        why = "there is no calibration curve: measure the standards first";
+    else if (!curve->accepted || !c->curve_good)
+        why = "the calibration curve was refused: calibrate again";
+    else if (curve->ended)
+        why = curve->why_ended;
+    else if (strcmp(curve->sensor, c->now->sensor) != 0)
+        why = "the calibration curve belongs to another sensor: calibrate this one";
+    else if (strcmp(curve->method, c->method->name) != 0)
+        why = "the calibration curve was made by another method: calibrate again";
+    else if (c->method->curve_valid_ns > 0 &&
+             c->in.t_ns - c->curve_born_t_ns > c->method->curve_valid_ns)
+        why = "the calibration curve is older than the method allows: calibrate again";
+    if (why == NULL)
+        return &c->curve;
+    sm_text_copy(ret_why, SM_REASON_SIZE, why);
+    return NULL;
+}
+
+static void fill_points(const struct sm_core *c, struct sm_event_curve *e)
+{
+    const struct sm_carried_curve *curve = &c->now->curve;
+    struct sm_point p[SM_POINTS_MAX];
+
+    points_of(curve, p);
+    e->n_points = curve->n_points;
+    for (size_t i = 0; i < curve->n_points; i++) {
+        e->point[i].capture = curve->point[i].capture;
+        e->point[i].item = curve->point[i].item;
+        sm_text_copy(e->point[i].name, sizeof e->point[i].name, curve->point[i].name);
+        e->point[i].x = p[i].x;
+        e->point[i].y = p[i].y;
+        e->point[i].t_c = p[i].t_c;
+        e->point[i].has_t = isfinite(p[i].t_c);
+        e->point[i].residual = e->point[i].back_calculated = (double)NAN;
+        if (e->fitted) {
+            e->point[i].residual = p[i].y - sm_curve_y(&e->curve, p[i].x, p[i].t_c);
+            e->point[i].back_calculated = sm_judge_read_back(&e->curve, &p[i]);
+        }
+    }
+}
+
+/* The row of standards is complete: fit and judge. */
+static void fit(struct sm_core *c)
+{
+    struct sm_carried_curve *curve = &c->now->curve;
+    struct sm_point p[SM_POINTS_MAX];
+    struct sm_judgement j;
+    struct sm_event *event = sm_core_push(c, SM_EVENT_CURVE);
+    struct sm_event_curve *e = &event->u.curve;
+
+    points_of(curve, p);
+    sm_judge_curve(c->method, p, curve->n_points, &j);
+    e->run = c->now->run.number;
+    e->accepted = j.accepted;
+    e->fitted = j.fitted;
+    e->curve = j.curve;
+    e->unit_x = c->method->measures;
+    e->unit_y = c->setup->profile->channel[c->signal_at].unit;
+    sm_text_copy(e->sensor, sizeof e->sensor, c->now->sensor);
+    sm_text_copy(e->method, sizeof e->method, c->method->name);
+    e->n_judged = j.n;
+    memcpy(e->judged, j.judged, j.n * sizeof j.judged[0]);
+    fill_points(c, e);
+    curve->n = event->n;
+    curve->accepted = j.accepted;
+    sm_text_copy(curve->sensor, sizeof curve->sensor, c->now->sensor);
+    sm_text_copy(curve->method, sizeof curve->method, c->method->name);
+    c->curve = j.curve;
+    c->curve_good = j.accepted;
+    c->mean_u2 = mean_u2_of(curve);
+    c->curve_born_t_ns = c->in.t_ns;
+}
+
+static void on_standard(struct sm_core *c, const struct sm_event_capture *cap, int64_t n)
+{
+    struct sm_carried_curve *curve = &c->now->curve;
+    const struct sm_item *item = &c->sheet->item[cap->where.item - 1];
+    struct sm_carried_point *p;
+    double x = 0, t_c = (double)NAN;
+    const char *how;
+    char why[SM_REASON_SIZE];
+    const bool has_t = temperature_of(c, &cap->s, &t_c, &how);
+
+    if (curve->has && curve->n != 0) { /* the first of a new row of standards */
+        memset(curve, 0, sizeof *curve);
+        c->curve_good = false;
+    }
+    curve->has = true;
+    if (item->standard >= 0 && curve->n_points < SM_POINTS_MAX &&
+        (has_t || c->method->model != SM_MODEL_NERNST) &&
+        sm_standard_value(c->setup->standards, (size_t)item->standard, t_c, &x, why) == SM_OK) {
+        p = &curve->point[curve->n_points++];
+        p->capture = n;
+        p->item = cap->where.item;
+        sm_text_copy(p->name, sizeof p->name, item->name);
+        p->x = x;
+        p->y = cap->value;
+        p->u95_y = cap->s.u95;
+        p->t_c = t_c;
+    }
+    if (sm_run_standards_done(&c->now->run, c->sheet))
+        fit(c);
+}
+
+/* Every provisional result of the run becomes what `kind` says. */
+static void change_provisional(struct sm_core *c, enum sm_event_kind kind, int64_t check_n,
+                               const char *why)
+{
+    struct sm_carried *now = c->now;
+    struct sm_event_change *change = NULL;
+    size_t kept = 0;
+
+    for (size_t i = 0; i < now->n_results; i++) {
+        struct sm_carried_result *r = &now->result[i];
+
+        if (r->state == SM_RESULT_PROVISIONAL) {
+            if (change == NULL)
+                change = &sm_core_push(c, kind)->u.change;
+            change->result[change->n++] = r->n;
+            if (kind == SM_EVENT_RELEASE)
+                continue; /* final: not carried any more */
+            r->state = SM_RESULT_HELD;
+            sm_text_copy(r->why, sizeof r->why, why);
+        }
+        now->result[kept++] = *r;
+    }
+    now->n_results = kept;
+    if (change != NULL) {
+        change->check = check_n;
+        sm_text_copy(change->why, sizeof change->why, why);
+    }
+}
+
+void sm_core_hold_provisional(struct sm_core *c, int64_t check_n, const char *why)
+{
+    change_provisional(c, SM_EVENT_HOLD, check_n, why);
+}
+
+/* Reads the check standard off the curve; false: ret_e->why says why it could not. */
+static bool read_check(struct sm_core *c, const struct sm_event_capture *cap,
+                       struct sm_event_check *ret_e)
+{
+    const struct sm_item *item = &c->sheet->item[cap->where.item - 1];
+    const struct sm_curve *curve = sm_core_curve(c, ret_e->why);
+    struct sm_read_off read;
+    double t_c = (double)NAN;
+    const char *how;
+    const bool has_t = temperature_of(c, &cap->s, &t_c, &how);
+
+    if (curve == NULL)
+        return false;
+    if (item->standard < 0 || sm_standard_value(c->setup->standards, (size_t)item->standard, t_c,
+                                                &ret_e->want, ret_e->why) != SM_OK)
+        return false;
+    if ((!has_t && curve->model == SM_MODEL_NERNST) ||
+        sm_curve_read(curve, cap->value, 1, t_c, &read) != SM_OK || !isfinite(read.x)) {
+        sm_text_copy(ret_e->why, sizeof ret_e->why,
+                     has_t ? "the curve gives no value for this reading"
+                           : "the temperature of the check standard is not known");
+        return false;
+    }
+    ret_e->found = read.x;
+    ret_e->difference = read.x - ret_e->want;
+    return true;
+}
+
+static void on_check(struct sm_core *c, const struct sm_event_capture *cap, int64_t n)
+{
+    struct sm_event *event = sm_core_push(c, SM_EVENT_CHECK);
+    struct sm_event_check *e = &event->u.check;
+    const int64_t check_n = event->n;
+
+    e->capture = n;
+    e->curve = c->now->curve.n;
+    e->where = cap->where;
+    e->unit = c->method->measures;
+    e->within = c->method->check.value;
+    e->closing = sm_run_closing(c->sheet, cap->where.item - 1);
+    e->computed = read_check(c, cap, e);
+    if (e->computed)
+        e->pass = sm_judge_check(c->method, e->want, e->found, e->why);
+    c->now->checks.has = true;
+    c->now->checks.last = check_n;
+    if (e->pass) {
+        c->now->checks.since = 0;
+        c->now->checks.last_good = check_n;
+        change_provisional(c, SM_EVENT_RELEASE, check_n,
+                           "the check that closes their bracket passed");
+    } else {
+        sm_core_hold_provisional(c, check_n,
+                                 "the check after them failed: measure them again on a good curve");
+    }
+}
+
+/* Puts a result that is not final where it is carried; the oldest held one makes room. */
+static void carry_result(struct sm_core *c, int64_t n, const struct sm_event_result *e)
+{
+    struct sm_carried *now = c->now;
+    struct sm_carried_result *r;
+
+    if (now->n_results == SM_RESULTS_MAX) {
+        size_t oldest = 0;
+
+        while (oldest + 1 < now->n_results && now->result[oldest].state != SM_RESULT_HELD)
+            oldest++;
+        memmove(&now->result[oldest], &now->result[oldest + 1],
+                (now->n_results - oldest - 1) * sizeof now->result[0]);
+        now->n_results--;
+    }
+    r = &now->result[now->n_results++];
+    r->n = n;
+    r->run = e->where.run;
+    r->item = e->where.item;
+    r->state = e->state;
+    sm_text_copy(r->why, sizeof r->why, e->why);
+}
+
+static void on_sample(struct sm_core *c, const struct sm_event_capture *cap, int64_t n)
+{
+    struct sm_event *event = sm_core_push(c, SM_EVENT_RESULT);
+    struct sm_event_result *e = &event->u.result;
+    const struct sm_curve *curve = sm_core_curve(c, e->why);
+    struct sm_made_result made;
+    const char *how = "";
+
+    e->capture = n;
+    e->where = cap->where;
+    sm_text_copy(e->name, sizeof e->name, cap->name);
+    e->unit = c->method->measures;
+    e->has_temperature = temperature_of(c, &cap->s, &e->temperature_c, &how);
+    sm_text_copy(e->temperature_how, sizeof e->temperature_how, how);
+    e->state = SM_RESULT_HELD;
+    if (curve != NULL) {
+        e->curve = c->now->curve.n;
+        sm_result_make(c->method, curve, cap->value, cap->s.u95, e->has_temperature,
+                       e->temperature_c, c->mean_u2, &made);
+        e->has_value = made.has_value;
+        e->value = made.value;
+        e->has_u95 = made.has_value;
+        e->u95 = made.u95;
+        sm_text_copy(e->shown, sizeof e->shown, made.shown);
+        sm_text_copy(e->why, sizeof e->why,
+                     made.held ? made.why : "waits for the check that closes its bracket");
+        if (!made.held)
+            e->state = SM_RESULT_PROVISIONAL;
+    }
+    c->now->checks.has = true;
+    c->now->checks.since++;
+    carry_result(c, event->n, e);
+}
+
+/* With a sheet under way, a capture that could not be given to an item is asked about. */
+static void ask_which(struct sm_core *c, const struct sm_event_capture *cap, int64_t n)
+{
+    struct sm_carried *now = c->now;
+    struct sm_event *event;
+
+    if (!c->has_sheet || now->run.next >= now->run.n_items ||
+        now->n_questions == SM_QUESTIONS_MAX || c->immersion.why_not_given[0] == '\0')
+        return;
+    event = sm_core_push(c, SM_EVENT_QUESTION);
+    event->u.question.capture = n;
+    sm_text_copy(event->u.question.asks, sizeof event->u.question.asks, "beaker");
+    sm_text_copy(event->u.question.text, sizeof event->u.question.text, c->immersion.why_not_given);
+    now->question[now->n_questions].n = event->n;
+    now->question[now->n_questions].capture = n;
+    now->n_questions++;
+    c->change_n = event->n;
+    (void)cap;
+}
+
+static void fill_others(const struct sm_core *c, struct sm_event_capture *e)
+{
+    const struct sm_profile *p = c->setup->profile;
+
+    for (size_t i = 0; i < p->n_channels; i++) {
+        size_t o;
+
+        if ((int)i == c->signal_at)
+            continue;
+        o = other_of(c, (int)i);
+        if (!e->s.other_mean[o].has)
+            continue;
+        sm_text_copy(e->other[e->n_others].name, sizeof e->other[0].name, p->channel[i].name);
+        e->other[e->n_others].value = e->s.other_mean[o].value;
+        e->other[e->n_others].range = e->s.other_range[o];
+        e->n_others++;
+    }
+}
+
+static void fill_capture(const struct sm_core *c, const struct sm_settled *s,
+                         struct sm_event_capture *e)
+{
+    struct sm_text name;
+
+    e->moved = c->immersion.moved_n;
+    e->where = c->immersion.where;
+    e->number = c->now->captures;
+    sm_text_init(&name, e->name, sizeof e->name);
+    if (e->where.has)
+        sm_text_add(&name, e->where.name);
+    else
+        sm_text_addf(&name, "capture %lld", (long long)e->number);
+    e->value = s->value;
+    e->unit = c->setup->profile->channel[c->signal_at].unit;
+    e->s = *s;
+    e->tolerance = s->tolerance;
+    fill_others(c, e);
+    sm_text_copy(e->who, sizeof e->who, c->now->on_duty);
+    if (!e->where.has && c->immersion.why_not_given[0] != '\0')
+        sm_text_copy(e->remark[e->n_remarks++], SM_REASON_SIZE, "beaker not confirmed");
+}
+
+void sm_core_captured(struct sm_core *c, const struct sm_settled *s)
+{
+    struct sm_immersion *im = &c->immersion;
+    struct sm_event *event = sm_core_push(c, SM_EVENT_CAPTURE);
+    struct sm_event_capture *e = &event->u.capture;
+    const int64_t n = event->n;
+
+    assert(im->begun);
+    c->now->captures++;
+    fill_capture(c, s, e);
+    im->captured = true;
+    im->settled_t_ns = c->in.t_ns;
+    c->now->last.has = true;
+    c->now->last.capture = n;
+    c->now->last.item = e->where.has ? e->where.item : 0;
+    sm_text_copy(c->now->last.name, sizeof c->now->last.name, e->name);
+    c->now->last.value = s->value;
+    c->now->last.u95 = s->u95;
+    c->change_n = n;
+    c->dirty = true;
+    if (im->given) {
+        sm_run_captured(&c->now->run, n);
+        im->given = false;
+    }
+    switch (e->where.kind) {
+    case SM_ITEM_STANDARD:
+        on_standard(c, e, n);
+        break;
+    case SM_ITEM_CHECK:
+        on_check(c, e, n);
+        break;
+    case SM_ITEM_SAMPLE:
+    case SM_ITEM_DUPLICATE:
+    case SM_ITEM_SPIKE:
+    case SM_ITEM_BLANK:
+        on_sample(c, e, n);
+        break;
+    case SM_ITEM_NONE:
+        ask_which(c, e, n);
+        break;
+    }
+}
