@@ -108,6 +108,12 @@ static int sys_rename(const struct sm_door *d, const char *from, const char *to)
     return result(rename(from, to));
 }
 
+static int sys_unlink(const struct sm_door *d, const char *path)
+{
+    (void)d;
+    return result(unlink(path));
+}
+
 static int sys_list(const struct sm_door *d, const char *path,
                     void (*each)(void *arg, const char *name), void *arg)
 {
@@ -217,6 +223,7 @@ const struct sm_door *sm_door_system(void)
         .stat = sys_stat,
         .mkdir = sys_mkdir,
         .rename = sys_rename,
+        .unlink = sys_unlink,
         .list = sys_list,
         .realpath = sys_realpath,
         .random = sys_random,

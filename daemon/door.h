@@ -30,6 +30,7 @@ struct sm_door {
     int (*stat)(const struct sm_door *d, const char *path, struct stat *ret_st);
     int (*mkdir)(const struct sm_door *d, const char *path, mode_t mode);
     int (*rename)(const struct sm_door *d, const char *from, const char *to);
+    int (*unlink)(const struct sm_door *d, const char *path);
     /* Every name in the folder, "." and ".." apart, in no order. */
     int (*list)(const struct sm_door *d, const char *path,
                 void (*each)(void *arg, const char *name), void *arg);

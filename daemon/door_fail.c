@@ -95,6 +95,11 @@ static int fail_rename(const struct sm_door *d, const char *from, const char *to
     return DUE(SM_CALL_RENAME) ? ERROR : UNDER->rename(UNDER, from, to);
 }
 
+static int fail_unlink(const struct sm_door *d, const char *path)
+{
+    return DUE(SM_CALL_UNLINK) ? ERROR : UNDER->unlink(UNDER, path);
+}
+
 static int fail_list(const struct sm_door *d, const char *path,
                      void (*each)(void *arg, const char *name), void *arg)
 {
@@ -185,6 +190,7 @@ void sm_door_fail_init(struct sm_door_fail *f, const struct sm_door *under)
         .stat = fail_stat,
         .mkdir = fail_mkdir,
         .rename = fail_rename,
+        .unlink = fail_unlink,
         .list = fail_list,
         .realpath = fail_realpath,
         .random = fail_random,
@@ -223,10 +229,31 @@ void sm_door_fail_heal(struct sm_door_fail *f)
 const char *sm_call_name(enum sm_call c)
 {
     static const char *const name[SM_CALL_COUNT] = {
-        "open",     "close",       "read",         "write",        "fdatasync",       "fsync",
-        "flock",    "fstat",       "stat",         "mkdir",        "rename",          "list",
-        "realpath", "random",      "tcgetattr",    "tcsetattr",    "tcflush",         "ioctl",
-        "poll",     "serial_open", "serial_close", "serial_setup", "serial_identity", "clock"
+        [SM_CALL_OPEN] = "open",
+        [SM_CALL_CLOSE] = "close",
+        [SM_CALL_READ] = "read",
+        [SM_CALL_WRITE] = "write",
+        [SM_CALL_FDATASYNC] = "fdatasync",
+        [SM_CALL_FSYNC] = "fsync",
+        [SM_CALL_FLOCK] = "flock",
+        [SM_CALL_FSTAT] = "fstat",
+        [SM_CALL_STAT] = "stat",
+        [SM_CALL_MKDIR] = "mkdir",
+        [SM_CALL_RENAME] = "rename",
+        [SM_CALL_UNLINK] = "unlink",
+        [SM_CALL_LIST] = "list",
+        [SM_CALL_REALPATH] = "realpath",
+        [SM_CALL_RANDOM] = "random",
+        [SM_CALL_TCGETATTR] = "tcgetattr",
+        [SM_CALL_TCSETATTR] = "tcsetattr",
+        [SM_CALL_TCFLUSH] = "tcflush",
+        [SM_CALL_IOCTL] = "ioctl",
+        [SM_CALL_POLL] = "poll",
+        [SM_CALL_SERIAL_OPEN] = "serial_open",
+        [SM_CALL_SERIAL_CLOSE] = "serial_close",
+        [SM_CALL_SERIAL_SETUP] = "serial_setup",
+        [SM_CALL_SERIAL_IDENTITY] = "serial_identity",
+        [SM_CALL_CLOCK] = "clock",
     };
 
     return (unsigned)c < SM_CALL_COUNT ? name[c] : "?";

@@ -20,6 +20,7 @@ enum sm_call {
     SM_CALL_STAT,
     SM_CALL_MKDIR,
     SM_CALL_RENAME,
+    SM_CALL_UNLINK,
     SM_CALL_LIST,
     SM_CALL_REALPATH,
     SM_CALL_RANDOM,
@@ -42,7 +43,8 @@ const char *sm_call_name(enum sm_call c);
     (SM_CALLS(SM_CALL_OPEN) | SM_CALLS(SM_CALL_READ) | SM_CALLS(SM_CALL_WRITE) |                   \
      SM_CALLS(SM_CALL_FDATASYNC) | SM_CALLS(SM_CALL_FSYNC) | SM_CALLS(SM_CALL_FLOCK) |             \
      SM_CALLS(SM_CALL_FSTAT) | SM_CALLS(SM_CALL_STAT) | SM_CALLS(SM_CALL_MKDIR) |                  \
-     SM_CALLS(SM_CALL_RENAME) | SM_CALLS(SM_CALL_LIST) | SM_CALLS(SM_CALL_CLOSE))
+     SM_CALLS(SM_CALL_RENAME) | SM_CALLS(SM_CALL_UNLINK) | SM_CALLS(SM_CALL_LIST) |                \
+     SM_CALLS(SM_CALL_CLOSE))
 #define SM_CALLS_ANY (~UINT32_C(0))
 
 struct sm_door_fail {
