@@ -3,6 +3,7 @@
  * from here. */
 #ifndef SM_VIEW_SENTENCE_H
 #define SM_VIEW_SENTENCE_H
+#include "base/time.h"
 #include "core/core.h"
 
 /* "Settling in sample final for 12 s. Next: duplicate of final." Names are safe for a terminal.
