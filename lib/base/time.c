@@ -60,7 +60,7 @@ size_t sm_utc_write(char out[SM_UTC_SIZE], int64_t utc_us)
     while (year_start(year + 1) <= day0) /* the guess is at most seven years early */
         year++;
     in_year = (int)(day0 - year_start(year));
-    while (month_day(year, month + 1) <= in_year)
+    while (month < 12 && month_day(year, month + 1) <= in_year)
         month++;
     at = put_digits(out, (int)year, 4, '-');
     at = put_digits(at, month, 2, '-');
@@ -130,10 +130,10 @@ static int64_t take_date(struct cursor *c)
 
     year = take_number(c, 4, 9999);
     take_one_of(c, "-");
-    month = take_number(c, 2, 12);
+    month = take_number(c, 2, 99);
     take_one_of(c, "-");
     day = take_number(c, 2, 31);
-    if (c->bad || month == 0) {
+    if (c->bad || month < 1 || month > 12) {
         c->bad = true;
         return 0;
     }
