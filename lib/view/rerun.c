@@ -266,6 +266,7 @@ static void compare(struct run *r, const struct sm_event *e)
         const int64_t logged_n = r->entry->n;
 
         json_decref(r->entry->json);
+        r->entry->json = NULL;
         if (event) {
             if (sm_replay_agree(r->told->how, line, n, t.buf, t.len - 1, why))
                 sm_text_copy(why, sizeof why, "the same values, written differently");
