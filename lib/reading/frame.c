@@ -41,8 +41,7 @@ const char *sm_eol_name(enum sm_eol e)
 static void restart(struct sm_framer *f)
 {
     f->length = 0;
-    f->clean = 0;
-    f->tail = 0;
+    f->clean = 0; /* and so the tail does not reach back */
     f->first = false;
     f->bad = false;
     f->dropping = false;
@@ -225,7 +224,7 @@ bool sm_framer_next(struct sm_framer *f, struct sm_line *ret_line)
 
     if (!f->lent)
         return false;
-    if (f->at == 0 && c->n > 0 && gap_is_over(f, c->t_ns) && end_line(f, 0, ret_line))
+    if (gap_is_over(f, c->t_ns) && end_line(f, 0, ret_line))
         return true;
     while (f->at < c->n) {
         const size_t i = f->at++;
