@@ -1,0 +1,13 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* limit.h: within the room: limits of a method, and when a curve and its checks are accepted. */
+#ifndef SM_SETUP_LIMIT_H
+#define SM_SETUP_LIMIT_H
+#include "setup/parts.h"
+
+/* A limit: a quantity above 0 that converts to `unit`, within what makes sense there. */
+bool sm_get_limit(const struct sm_reader *r, const struct sm_node *node, enum sm_unit unit,
+                  double *ret_value);
+
+/* Levels, R² and the rules beside it, checks and duplicates; after model and units are known. */
+void sm_acceptance_fill(const struct sm_reader *r, const struct sm_node *root, struct sm_method *m);
+#endif
