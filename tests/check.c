@@ -26,7 +26,7 @@ char *check_read_file(const char *path_from_source_dir, size_t *ret_n)
     char path[1024];
     FILE *f;
     char *text = NULL;
-    long size;
+    long size = -1;
 
     snprintf(path, sizeof path, "%s/%s", SM_SOURCE_DIR, path_from_source_dir);
     f = fopen(path, "rb");
