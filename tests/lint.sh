@@ -97,7 +97,7 @@ check_includes()
                      header ~ /^(jansson|yaml|event2|evutil|openssl|libserialport|systemd)/)
                 finding("room " room " includes <" header ">")
         }' >"$tmp/out"
-    report "rooms include only themselves and the rooms above"
+    report "room order"
 }
 
 # The libraries of the pure rooms, as far as they are built; a finding for each that is not.
@@ -116,7 +116,7 @@ pure_libraries()
 # put in is taken off first.
 check_symbols()
 {
-    have "pure rooms call only what tests/pure-symbols.txt lists" nm || return
+    have "pure calls" nm || return
     : >"$tmp/out"
     pure_libraries >"$tmp/libs"
     while read -r lib; do
@@ -153,14 +153,14 @@ check_symbols()
             if (!good)
                 print $1 " calls " symbol
         }' tests/pure-symbols.txt "$tmp/calls" | sort -u >>"$tmp/out"
-    report "pure rooms call only what tests/pure-symbols.txt lists"
+    report "pure calls"
 }
 
 # The pure rooms keep nothing between calls: no section for variables. (Tables of pointers are constant
 # and lie in .data.rel.ro.) Sanitizers and coverage bring variables of their own.
 check_globals()
 {
-    have "pure rooms have no variables outside functions" objdump || return
+    have "pure memory" objdump || return
     : >"$tmp/out"
     pure_libraries >"$tmp/libs"
     while read -r lib; do
@@ -172,7 +172,7 @@ check_globals()
                 print "lib/" room "/" object " has a variable in " $2
             }'
     done <"$tmp/libs" >>"$tmp/out"
-    report "pure rooms have no variables outside functions"
+    report "pure memory"
 }
 
 # What no room up to core may write, though the compiler would take it.
@@ -182,11 +182,11 @@ check_words()
     grep -nE '\b(setlocale|long double|_GNU_SOURCE|strto(ld|f)|ato[fil])\b' \
         $(for room in $pure; do echo "lib/$room"; done | while read -r dir; do files "$dir" -- '*.[ch]'; done) \
         /dev/null | grep -vE '^[^:]*:[0-9]+:[ ]*(/?\*|//)' | sed 's/^\([^:]*:[0-9]*\):/\1 /' >"$tmp/out"
-    report "pure rooms have no locale, long double or GNU dialect"
+    report "pure language"
     files lib daemon tests conf systemd replay-data -- '*.[ch]' '*.sh' '*.py' '*.txt' '*.md' '*.yaml' '*.js' '*.html' '*.css' |
         xargs grep -nE '\b(TO[D]O|FIX[M]E)\b|[Nn]ot implemente[d]' /dev/null |
         sed 's/^\([^:]*:[0-9]*\):/\1 /' >"$tmp/out"
-    report "nothing is left for later in words"
+    report "nothing left for later"
 }
 
 check_spdx()
@@ -198,16 +198,16 @@ check_spdx()
             sed -n ${line}p "$file" | grep -q 'SPDX-License-Identifier: GPL-3\.0-or-later' ||
                 echo "$file:$line has no SPDX line"
         done >"$tmp/out"
-    report "every source names its licence in its first line"
+    report "licence lines"
 }
 
 check_format()
 {
-    have "clang-format agrees" clang-format || return
+    have "format" clang-format || return
     files lib daemon tests -- '*.[ch]' | xargs clang-format --dry-run -Werror 2>&1 |
         sed -n 's/^\([^:]*:[0-9]*\):[0-9]*: error: code should be clang-formatted.*/\1 differs/p' |
         awk -F: '!seen[$1]++' >"$tmp/out" # the first place of each file will do
-    report "clang-format agrees"
+    report "format"
 }
 
 check_length()
@@ -231,12 +231,12 @@ check_length()
             for (file in listed)
                 printf "%s:%d %s is listed, yet not longer than 500 lines\n", list, listed[file], file
         }' >"$tmp/out"
-    report "no file in lib/ or daemon/ is longer than 500 lines"
+    report "length"
 }
 
 check_cppcheck()
 {
-    have "cppcheck finds nothing" cppcheck || return
+    have "cppcheck" cppcheck || return
     dirs=
     for dir in lib daemon; do
         [ -n "$(files "$dir" -- '*.c')" ] && dirs="$dirs $dir"
@@ -250,15 +250,15 @@ check_cppcheck()
     if [ $code -ne 0 ] && [ ! -s "$tmp/out" ]; then
         echo "cppcheck ended with $code: $(head -1 "$tmp/cppcheck")" >"$tmp/out"
     fi
-    report "cppcheck finds nothing"
+    report "cppcheck"
 }
 
 check_tidy()
 {
-    have "clang-tidy finds nothing" clang-tidy || return
+    have "clang-tidy" clang-tidy || return
     if [ ! -f "$build/compile_commands.json" ]; then
         echo "no compile_commands.json in $build" >"$tmp/out"
-        report "clang-tidy finds nothing"
+        report "clang-tidy"
         return
     fi
     sed -n 's|.*"file": "\(.*\)".*|\1|p' "$build/compile_commands.json" |
@@ -276,7 +276,7 @@ check_tidy()
     if [ $code -ne 0 ] && [ ! -s "$tmp/out" ]; then
         echo "clang-tidy ended with $code: $(grep -v 'warnings generated' "$tmp/err" | head -1)" >"$tmp/out"
     fi
-    report "clang-tidy finds nothing"
+    report "clang-tidy"
 }
 
 if [ $# -gt 1 ]; then
