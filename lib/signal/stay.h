@@ -1,0 +1,36 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* stay.h: one stay in one place: what belongs to it alone, and goes or comes back with it. */
+#ifndef SM_SIGNAL_STAY_H
+#define SM_SIGNAL_STAY_H
+#include <stdbool.h>
+#include <stdint.h>
+
+#include "signal/bins.h"
+#include "signal/signal.h"
+#include "signal/window.h"
+
+struct sm_stay {
+    enum sm_mark_by by;
+    int64_t moved_t_ns;  /* when it began, as told */
+    int64_t anchor_t_ns; /* the dwell counts from here; later than moved_t_ns when a slow start went
+                            on */
+    int64_t way_from_t_ns; /* by value or transit: when the way that led here began */
+    int64_t stepped_t_ns;  /* when the latest departure that led here began */
+    double direction;      /* of it: -1, 1; 0 = any (from an open circuit, from nothing) */
+    unsigned lifts;
+    bool captured;
+    bool given_up;      /* the longest wait is over */
+    double value, u95;  /* captured */
+    unsigned n;         /* readings */
+    int64_t first_t_ns; /* the first of them */
+    double first[3];    /* and the first three */
+    struct sm_bins bins;
+    struct sm_window window;
+};
+
+/* An empty stay whose dwell begins at t_ns. */
+void sm_stay_begin(struct sm_stay *s, int64_t t_ns, int64_t bin_ns);
+/* The same stay counts from t_ns on: what came before is dropped. */
+void sm_stay_again(struct sm_stay *s, int64_t t_ns, int64_t bin_ns);
+void sm_stay_add(struct sm_stay *s, const struct sm_signal_reading *r, int64_t over_ns);
+#endif
