@@ -65,6 +65,7 @@ files()
 # cryptography; the simulator knows nothing of how settling is judged.
 check_includes()
 {
+    # shellcheck disable=SC2016
     files lib tests/sim -- '*.[ch]' | xargs awk -v rooms="$rooms" '
         BEGIN {
             n = split(rooms, name, " ")
