@@ -135,7 +135,7 @@ static void finish_nernst(struct sm_curve *c, const struct sm_poly *f, double ph
 
     c->ph_iso = ph_iso;
     c->e_iso = f->coefficient[0];
-    c->slope_fraction = -f->coefficient[1];
+    c->slope_fraction = 0 - f->coefficient[1]; /* never -0 */
     c->t_c = t_c;
     c->coefficient[0].value = f->coefficient[0] + j * f->coefficient[1];
     c->coefficient[1].value = k * f->coefficient[1];

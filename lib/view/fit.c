@@ -10,7 +10,7 @@
 #include "base/number.h"
 
 #define HEAD_SIZE 8192 /* everything but the lines of points and readings */
-#define LINE_SIZE 320  /* one point or one reading */
+#define LINE_SIZE 400  /* one point or one reading */
 #define CELL_SIZE 64
 
 size_t sm_fit_view_size(const struct sm_fit_view *v)
@@ -174,7 +174,7 @@ static void text_title(const struct sm_fit_view *v, struct sm_text *t)
     sm_text_add(t, " against ");
     name_of(t, v->x_name, "x");
     if (c->model == SM_MODEL_NERNST)
-        sm_text_addf(t, ", mV against pH at %g °C", c->t_c);
+        sm_text_addf(t, ", at %g °C", c->t_c);
     sm_text_addf(t, "\n%zu points at %zu levels, %zu degrees of freedom\n\n", c->n, c->levels,
                  c->dof);
 }
@@ -207,16 +207,19 @@ static void text_readings(const struct sm_fit_view *v, struct sm_text *t)
     for (size_t i = 0; i < v->n_readings; i++) {
         const struct sm_fit_reading *r = &v->readings[i];
         const struct sm_read_off *o = &r->read;
+        const bool inside = r->has && o->between_standards;
         char remark[CELL_SIZE] = "";
         if (!r->has)
-            cell(remark, "the curve has no single x for it");
-        else if (!o->between_standards)
-            cell(remark, "outside the standards: no result");
+            cell(remark, "no result: no single x gives it");
+        else if (!inside)
+            cell(remark, "no result: %s standard, %.6g",
+                 o->x < v->curve->x_from ? "below the lowest" : "above the highest",
+                 o->x < v->curve->x_from ? v->curve->x_from : v->curve->x_to);
         else if (r->m > 1)
             cell(remark, "mean of %u", r->m);
-        row(t, cell(a, "%.8g", r->y), r->has ? cell(b, "%.6g", o->x) : "none",
-            r->has ? cell(c, "%.3g", o->standard_uncertainty) : "",
-            r->has ? cell(d, "%.3g", k * o->standard_uncertainty) : "", remark);
+        row(t, cell(a, "%.8g", r->y), inside ? cell(b, "%.6g", o->x) : "",
+            inside ? cell(c, "%.3g", o->standard_uncertainty) : "",
+            inside ? cell(d, "%.3g", k * o->standard_uncertainty) : "", remark);
     }
     sm_text_add(t, "\n");
 }

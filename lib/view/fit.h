@@ -24,7 +24,6 @@ struct sm_fit_view {
     size_t n_points;
     const struct sm_fit_reading *readings;
     size_t n_readings;
-    double read_t_c; /* NERNST: temperature of the readings */
 };
 
 /* Bytes that hold either form. */
