@@ -19,11 +19,13 @@ struct sm_group_line {
 };
 
 struct sm_group {
+    struct sm_group *next; /* in the meter's list of those under way */
     uint64_t epoch;                 /* of the meter's file; older ones are dropped */
     char begins[SM_FILE_NAME_SIZE]; /* the file that this group begins; "" goes on with the one open
                                      */
     bool ends;                      /* the file is closed after it */
     bool durable;                   /* holds a durable event */
+    uint64_t raw_bytes;             /* of the meter, in it */
     int64_t since_boot_ns;          /* when its first entry was appended */
     char *text;
     size_t n, cap;
