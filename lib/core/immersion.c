@@ -52,7 +52,7 @@ static void give(struct sm_core *c, enum sm_mark_by by)
     if (!c->has_sheet || c->now->rest.has)
         return;
     if (by != SM_MOVED_TRANSIT && !marked) {
-        if (by == SM_MOVED_START && c->now->run.next < c->now->run.n_items)
+        if (by == SM_MOVED_START && c->now->run.next > 0 && c->now->run.next < c->now->run.n_items)
             sm_text_copy(
                 im->why_not_given, sizeof im->why_not_given,
                 "nobody saw the probe being moved: press next when it is in the next item");
