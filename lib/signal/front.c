@@ -13,7 +13,7 @@
 #define TOLERANCES 10.0     /* more than this is odd whatever the noise: air never rests */
 #define STRAY_MOST 3        /* more odd readings in a row are not stray */
 #define ODD_OF 16           /* of so many latest readings … */
-#define ODD_MOST 8          /* … so many odd ones are no accident, though each came back */
+#define ODD_MOST 6          /* … so many odd ones are no accident, though each came back */
 #define USUAL_WEIGHT 0.0625 /* of a new spacing in the usual one */
 #define SPACING_LEAST_S 1e-3
 

@@ -8,10 +8,9 @@
  * hyperbolic tails, 1 / (sqrt 2 - 1) for a square-root-of-time tail. */
 #define FACTOR 2.41
 #define FLOOR_SD2                                                                                  \
-    0.6                 /* the scatter of bins is never believed below 0.6 of the noise's variance \
-                         */
-#define FLOOR_STEP2 2.0 /* … nor below the step's, a bin */
-#define RHO_LEAST 8     /* bins for which neighbours can be compared */
+    0.6             /* the scatter of bins is never believed below 0.6 of the noise's variance     \
+                     */
+#define RHO_LEAST 8 /* bins for which neighbours can be compared */
 #define RHO_MOST 0.85
 
 struct sums {
@@ -48,11 +47,11 @@ static struct sums sum(const struct sm_bins *b, double from_s, double to_s)
 }
 
 /* Variance of one reading by the scatter of bins about a straight line from from_s on, with what
- * its neighbours have in common; never below what noise and step make. */
-static double variance(const struct sm_bins *b, double from_s, double sd, double step_u)
+ * its neighbours have in common; never below what the noise makes. */
+static double variance(const struct sm_bins *b, double from_s, double sd)
 {
     const struct sums s = sum(b, from_s, INFINITY);
-    const double floor = fmax(FLOOR_SD2 * sd * sd, FLOOR_STEP2 * step_u * step_u * s.n / s.bins);
+    const double floor = FLOOR_SD2 * sd * sd;
     const double tm = s.t / s.n, xm = s.x / s.n;
     double stt = 0, stx = 0, see = 0, pairs = 0, before = 0, rho = 0, slope;
 
@@ -87,7 +86,7 @@ static double variance(const struct sm_bins *b, double from_s, double sd, double
     return fmax(see / (s.bins - 2), floor) * (1 + rho) / (1 - rho);
 }
 
-bool sm_halves_of(const struct sm_bins *b, double sd, double step_u, struct sm_halves *ret_halves)
+bool sm_halves_of(const struct sm_bins *b, double sd, struct sm_halves *ret_halves)
 {
     const double span_s = sm_bins_span_s(b);
     const struct sums late = sum(b, span_s / 2, INFINITY);
@@ -98,7 +97,7 @@ bool sm_halves_of(const struct sm_bins *b, double sd, double step_u, struct sm_h
         early = sum(b, 0, span_s / 2);
     if (early.bins == 0 || late.bins == 0)
         return false;
-    var = variance(b, span_s / 2, sd, step_u);
+    var = variance(b, span_s / 2, sd);
     *ret_halves = (struct sm_halves){
         .mean = b->reference + late.x / late.n,
         .difference = late.x / late.n - early.x / early.n,

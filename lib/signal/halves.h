@@ -13,13 +13,13 @@ struct sm_halves {
     double var_mean, var_difference; /* by the noise, u² */
 };
 
-/* sd: of a reading, from second differences; step_u: standard uncertainty by the display step.
- * False: too few closed bins to say anything. */
-bool sm_halves_of(const struct sm_bins *b, double sd, double step_u, struct sm_halves *ret_halves);
+/* sd: of a reading, from second differences. False: too few closed bins to say anything. */
+bool sm_halves_of(const struct sm_bins *b, double sd, struct sm_halves *ret_halves);
 
 /* What may still be to come at most: 2.41 |difference|. */
 double sm_halves_to_come(const struct sm_halves *h);
 
-/* That, and k times the noise and the step: |mean - end| is below it at about 95 % for k = 2. */
+/* That, and k times the noise and the step (step_u: its standard uncertainty): |mean - end| is
+ * below it at about 95 % for k = 2. */
 double sm_halves_bound(const struct sm_halves *h, double k, double step_u);
 #endif

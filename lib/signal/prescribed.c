@@ -28,7 +28,7 @@ void sm_prescribed(const struct sm_judge *j, struct sm_settled *ret_settled)
     s->part[SM_PART_NOISE] = (struct sm_maybe){ true, K * mean_u };
     if (j->step > 0)
         s->part[SM_PART_STEP] = (struct sm_maybe){ true, K * step_u };
-    if (sm_halves_of(&j->stay->bins, j->sd, step_u, &halves)) {
+    if (sm_halves_of(&j->stay->bins, j->sd, &halves)) {
         s->part[SM_PART_TO_COME] = (struct sm_maybe){ true, sm_halves_to_come(&halves) };
         s->u95 = fmax(s->u95, sm_halves_bound(&halves, K, step_u));
     }

@@ -17,6 +17,8 @@ void sm_stay_begin(struct sm_stay *s, int64_t t_ns, int64_t bin_ns)
     s->moved_t_ns = s->way_from_t_ns = s->stepped_t_ns = t_ns;
     s->by = SM_MOVED_START;
     s->direction = 0;
+    s->way_open = false;
+    s->way_how = SM_TRANSIT_DEPARTURES;
     s->lifts = 0;
     s->captured = s->given_up = false;
     s->value = s->u95 = 0;

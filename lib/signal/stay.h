@@ -15,8 +15,10 @@ struct sm_stay {
     int64_t anchor_t_ns; /* the dwell counts from here; later than moved_t_ns when a slow start went
                             on */
     int64_t way_from_t_ns; /* by value or transit: when the way that led here began */
-    int64_t stepped_t_ns;  /* when the latest departure that led here began */
-    double direction;      /* of it: -1, 1; 0 = any (from an open circuit, from nothing) */
+    bool way_open;         /* … and an open circuit was in it, seen so: */
+    enum sm_transit_how way_how;
+    int64_t stepped_t_ns; /* when the latest departure that led here began */
+    double direction;     /* of it: -1, 1; 0 = any (from an open circuit, from nothing) */
     unsigned lifts;
     bool captured;
     bool given_up;      /* the longest wait is over */

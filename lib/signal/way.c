@@ -97,6 +97,8 @@ static void leave(struct sm_signal *s, int64_t t_ns, const struct sm_departure *
     w->from_known = true;
     w->last_t_ns = t_ns;
     w->goings = d != NULL ? 1 : 0;
+    w->transit = goes_on && stay->way_open;
+    w->how = stay->way_how;
     if (goes_on)
         w->goings += stay->by == SM_MOVED_VALUE ? 1 : 2;
     if (d != NULL)
@@ -170,6 +172,8 @@ void sm_way_tell(struct sm_signal *s, int64_t t_ns)
         return;
     let_go(s, "moved on before it settled", false);
     stay->way_from_t_ns = w->from_t_ns;
+    stay->way_open = w->transit;
+    stay->way_how = w->how;
     stay->stepped_t_ns = w->last_t_ns;
     stay->direction = w->direction;
     if (is_transit(w))
