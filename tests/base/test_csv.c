@@ -73,6 +73,14 @@ static void tables_of_every_shape_are_read(void **state)
         { "; in quotes only", "\"t;s\",v\n1,2\n", 1, { 1 }, { 2 }, "t;s", "v" },
         { "exponents", "t,v\n1e-3,-2.5E+2\n", 1, { 0.001 }, { -250 }, "t", "v" },
         { "a name like a number", "2-propanol,y\n1,2\n", 1, { 1 }, { 2 }, "2-propanol", "y" },
+        { "quotes, ;", "\"t\";\"v\"\n1,5;2\n", 1, { 1.5 }, { 2 }, "t", "v" },
+        { "names that begin like nan",
+          "name,information\n1,2\n",
+          1,
+          { 1 },
+          { 2 },
+          "name",
+          "information" },
         { "one name empty", ",y\n1,2\n", 1, { 1 }, { 2 }, "", "y" },
     };
     (void)state;
@@ -138,6 +146,8 @@ static void a_doubtful_row_is_refused_with_its_line(void **state)
         { "t,v\n0,5,1\n", 2, "got 3" }, /* a decimal comma where the comma separates */
         { "t,v\n\"0,5\",1\n", 2, "got \"0,5\"" },
         { "nan,nan\n1,2\n", 1, "got \"nan\"" }, /* data, not a header */
+        { "# c\nNULL,None\n1,2\n", 2, "got \"NULL\"" },
+        { "n/a,-Infinity\n1,2\n", 1, "got \"n/a\"" },
         { "nan,1\n1,2\n", 1, "got \"nan\"" },
         { "1,abc\n1,2\n", 1, "got \"abc\"" },
         { "abc,1\n1,2\n", 1, "got \"abc\"" },
@@ -318,6 +328,7 @@ static void cells_go_out_quoted_and_without_formulas(void **state)
         { "a\033[2J", "a [2J" },
         { "a\x7F\xC2\x9B", "a  " },
         { "\xC2\xB5S/cm", "\xC2\xB5S/cm" },
+        { "\xC2\x9F.\xC2\xA0.", " .\xC2\xA0." }, /* the last of C1, and what follows it */
         { "a\xFF", "a\\xff" },
         { "a\xE2\x80\xAE", "a\\xe2\\x80\\xae" },
     };

@@ -123,6 +123,7 @@ static void whole_numbers_are_read_to_their_limits(void **state)
         { "9223372036854775808", SM_EVALUE, 42 },
         { "-9223372036854775809", SM_EVALUE, 42 },
         { "99999999999999999999999999", SM_EVALUE, 42 },
+        { "000000000000000000000000000000000000000000000000000000000000012", SM_OK, 12 },
         { "", SM_ESYNTAX, 42 },
         { "-", SM_ESYNTAX, 42 },
         { "1.0", SM_ESYNTAX, 42 },
@@ -264,6 +265,7 @@ static void the_step_is_that_of_the_last_digit(void **state)
         { "0e999", 0 },
         { "1.0e-9", 1e-10 },
         { "12.3456789012", 1e-10 },
+        { "0000000000000000000000000000000000000000000000000000000000001.5", 0.1 },
     };
     (void)state;
     for (size_t i = 0; i < COUNT(cases); i++) {

@@ -274,6 +274,7 @@ static void names_are_bounded_and_harmless(void **state)
         { "\xC2\xA0"
           "a",
           false },                  /* U+00A0, a space too */
+        { "a\xE2\x80\xA8", false }, /* U+2028, a space too */
         { "a\xE3\x80\x80", false }, /* U+3000, a space too */
         { "a\tb", false },
         { "a\nb", false },
