@@ -8,6 +8,8 @@
 
 #include "folder.h"
 
+#define N_MOST INT64_C(1000000000000000) /* no meter makes as many entries */
+
 struct names { /* the newest log file older than `below` */
     int64_t below, best;
     char name[SM_FILE_NAME_SIZE];
@@ -73,6 +75,8 @@ static bool take_file(struct sm_beginning *b, const char *name, int64_t ordinal,
     const bool newest = !b->previous.has;
     const bool usable = s == SM_OK || (s == SM_EVALUE && r->verify.stamps > 0);
 
+    if (r->next_n > N_MOST) /* a damaged line's number */
+        r->next_n = r->verify.last_n + r->verify.after_lines + 2;
     if (r->next_n > b->next_n)
         b->next_n = r->next_n;
     if (newest) {

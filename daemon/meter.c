@@ -155,6 +155,8 @@ void sm_meter_feed(struct sm_meter *m, const struct sm_now *now, struct sm_input
     in->t_ns = now->boot_ns - m->opened_boot_ns;
     in->utc_us = now->utc_us;
     in->chunk.t_ns = in->t_ns;
+    m->last_t_ns = in->t_ns;
+    m->last_utc_us = in->utc_us;
     t = sm_meter_line(m);
     sm_entry_input(&t, in);
     sm_meter_append(m, now, &t, false, 0);

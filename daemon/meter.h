@@ -74,14 +74,16 @@ SM_MUST_CHECK enum sm_status sm_meter_act(struct sm_meter *m, const struct sm_no
                                           struct sm_act *act, int64_t *ret_n,
                                           char ret_why[SM_WHY_SIZE]);
 
-/* One line of JSON. */
-void sm_meter_status(struct sm_meter *m, const struct sm_now *now, struct sm_text *t);
+/* One line of JSON, which says of how many. */
+void sm_meter_status(struct sm_meter *m, const struct sm_now *now, size_t meters,
+                     struct sm_text *t);
 
 /* For followers that begin with older entries: what of the present file is on disk … */
 struct sm_meter_disk {
     int64_t ordinal; /* 0: no file yet */
     char path[SM_FOLDER_SIZE + SM_FILE_NAME_SIZE];
     int64_t bytes;
+    int64_t before_ordinal, before_bytes; /* the same of the file before; 0: none in this run */
 };
 void sm_meter_disk(const struct sm_meter *m, struct sm_meter_disk *ret_disk);
 /* … and the entries shown already that are not on disk yet, in order. */

@@ -134,11 +134,12 @@ static void write_core(struct sm_meter *m, const struct sm_now *now, struct sm_t
     sm_json_int(t, "unread", (int64_t)s->unread);
 }
 
-void sm_meter_status(struct sm_meter *m, const struct sm_now *now, struct sm_text *t)
+void sm_meter_status(struct sm_meter *m, const struct sm_now *now, size_t meters, struct sm_text *t)
 {
     sm_json_head(t, 0, m->core != NULL ? now->boot_ns - m->opened_boot_ns : 0, now->utc_us,
                  "status");
     sm_json_text(t, "meter", m->name);
+    sm_json_size(t, "meters", meters);
     sm_json_bool(t, "logging", m->log == LOG_OPEN);
     if (m->missed.is) {
         char from[SM_UTC_SIZE];

@@ -116,6 +116,8 @@ static void begin_file(struct sm_meter *m, const struct sm_now *now, struct sm_e
     m->opened_boot_ns = now->boot_ns;
     m->opened_day = sm_utc_day(now->utc_us);
     m->signed_boot_ns = SM_NEVER;
+    m->last_t_ns = 0;
+    m->last_utc_us = now->utc_us;
     sm_hasher_take(m->hasher, m->last_stamp); /* begins anew, whatever a failed file left */
     m->n++;
     m->stamp_from = m->n;
@@ -210,7 +212,9 @@ void sm_meter_close_file(struct sm_meter *m, const struct sm_now *now, const cha
 {
     struct sm_text t = sm_meter_line(m);
 
-    sm_entry_close(&t, ++m->n, now->boot_ns - m->opened_boot_ns, now->utc_us, why);
+    m->last_t_ns = now->boot_ns - m->opened_boot_ns;
+    m->last_utc_us = now->utc_us;
+    sm_entry_close(&t, ++m->n, m->last_t_ns, m->last_utc_us, why);
     sm_meter_append(m, now, &t, true, 0);
     if (m->group != NULL)
         m->group->ends = true;

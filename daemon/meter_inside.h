@@ -49,7 +49,8 @@ struct sm_meter {
     struct sm_writer *writer;
     uint64_t epoch;
     struct sm_hasher *hasher;
-    int64_t n; /* the last used */
+    int64_t n;                      /* the last used */
+    int64_t last_t_ns, last_utc_us; /* of the last entry: a stamp repeats them */
     int64_t ordinal;
     int64_t opened_boot_ns, opened_day;
     int64_t stamp_from; /* first entry not under a stamp */

@@ -89,8 +89,7 @@ void sm_meter_stamp(struct sm_meter *m, const struct sm_now *now, bool sign)
         return;
     }
     t = sm_meter_line(m);
-    sm_entry_stamp(&t, m->n, now->boot_ns - m->opened_boot_ns, now->utc_us, m->stamp_from, hash,
-                   sign ? sig : NULL);
+    sm_entry_stamp(&t, m->n, m->last_t_ns, m->last_utc_us, m->stamp_from, hash, sign ? sig : NULL);
     sm_meter_append(m, now, &t, true, 0);
     if (m->trouble[0] != '\0')
         return;
@@ -137,6 +136,8 @@ static void announce(struct sm_meter *m, const struct sm_group *g)
 static void on_disk(struct sm_meter *m, const struct sm_group *g, const struct sm_now *now)
 {
     if (g->begins[0] != '\0') {
+        m->disk.before_ordinal = m->disk.ordinal;
+        m->disk.before_bytes = m->disk.bytes;
         m->disk.ordinal = sm_file_ordinal(g->begins);
         m->disk.bytes = 0;
         snprintf(m->disk.path, sizeof m->disk.path, "%s/%s", m->folder.path, g->begins);
