@@ -1,0 +1,53 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* shape.h: how a simulated meter writes a reading, and what it answers to. No maker's format: all
+ * are invented.
+ *
+ * A template is text with directives, each `%[flags][width][.decimals]letter`:
+ *   v  the value          a  its magnitude          s  its sign alone, + or -
+ *   e, m  the same two with an exponent             w  the status word: the shape's "ok", or
+ * another t  temperature, °C    n  running number         %  a percent sign X  exclusive or, S sum,
+ * both as two hex digits; M  CRC-16/MODBUS as four: over all bytes of the line so far except the
+ * last (the mark); with flag - the last one too Flags: `+` sign always, `0` leading zeros, `,`
+ * decimal comma, `k` in thousands (mV as V); `-` with s: only a minus, and a blank after it. A word
+ * that the meter shows (open circuit, wait) goes where w is, else in place of the value,
+ * right-aligned in its width. */
+#ifndef SM_SIM_SHAPE_H
+#define SM_SIM_SHAPE_H
+#include <stdbool.h>
+#include <stddef.h>
+
+#define SM_SHAPE_TEXT 160 /* bytes of a template or question, and its NUL */
+#define SM_SHAPE_LINE 512 /* bytes that hold any line a shape writes */
+
+struct sm_shape_text {
+    char bytes[SM_SHAPE_TEXT]; /* any bytes; NUL-terminated too */
+    size_t n;
+};
+
+struct sm_shape {
+    struct sm_shape_text line; /* template */
+    struct sm_shape_text ok;   /* the status word when all is well */
+    struct sm_shape_text ask;  /* what a reading is asked with; n == 0: the meter sends by itself */
+    struct sm_shape_text identity, identity_answer; /* n == 0: none */
+};
+
+struct sm_shown { /* what the display shows */
+    double value;
+    const char *word; /* in place of the value; NULL: none */
+    double celsius;
+    unsigned long number;
+};
+
+/* One of the shapes known by name (as in conf/profiles); false: no such name. */
+bool sm_shape_known(const char *name, struct sm_shape *ret_shape);
+
+/* NULL where the template can be used, else what is wrong with it. */
+const char *sm_shape_wrong(const struct sm_shape_text *line);
+
+/* The decimals of the first value that the template shows; -1: it has an exponent. */
+int sm_shape_decimals(const struct sm_shape_text *line);
+
+/* Writes a line by a template that sm_shape_wrong has passed; returns its length. */
+size_t sm_shape_write(const struct sm_shape *shape, const struct sm_shown *shown,
+                      char out[SM_SHAPE_LINE]);
+#endif
