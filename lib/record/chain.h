@@ -33,6 +33,11 @@ SM_MUST_CHECK enum sm_status sm_signer_sign(const struct sm_signer *s, const cha
 SM_MUST_CHECK enum sm_status sm_signature_check(const char *key_hex, const char *meter,
                                                 int64_t ordinal, int64_t n, const char *hash_hex,
                                                 const char *sig_hex);
+/* The same over any text; what is signed in a log is always a statement as above. */
+SM_MUST_CHECK enum sm_status sm_signer_sign_text(const struct sm_signer *s, const char *text,
+                                                 size_t n, char ret_sig_hex[SM_SIG_HEX]);
+SM_MUST_CHECK enum sm_status sm_signature_check_text(const char *key_hex, const char *text, size_t n,
+                                                     const char *sig_hex);
 /* Short form for people: first 16 hex digits of the SHA-256 of the raw public key. */
 SM_MUST_CHECK enum sm_status sm_key_fingerprint(const char *key_hex, char ret_hex[17]);
 #endif

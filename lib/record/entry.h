@@ -10,7 +10,9 @@
 #define SM_ENTRY_MAX (1024u * 1024u) /* bytes of one line, the newline included */
 
 /* Writing: each writes one whole line with its newline. On t->cut the line is not whole: the storage
- * was too small (SM_ENTRY_MAX holds any). */
+ * was too small (SM_ENTRY_MAX holds any). Text is UTF-8; a byte that is not becomes '?', so whoever
+ * lets text in (acts, names of adapters, a meter's identity) makes it UTF-8 before the core sees it.
+ * utc_us lies in the years 0000 to 9999. A live event (n = 0) is written without n. */
 void sm_entry_input(struct sm_text *t, const struct sm_input *in);
 void sm_entry_event(struct sm_text *t, const struct sm_event *e);
 
@@ -36,13 +38,15 @@ void sm_entry_open(struct sm_text *t, const struct sm_entry_open *o);
 void sm_entry_file(struct sm_text *t, int64_t n, int64_t utc_us, const char *name, const char *text,
                    size_t text_n, bool sheet);
 void sm_entry_close(struct sm_text *t, int64_t n, int64_t t_ns, int64_t utc_us, const char *why);
+/* t_ns and utc_us are those of the entry before it: `verify` demands it. */
 void sm_entry_stamp(struct sm_text *t, int64_t n, int64_t t_ns, int64_t utc_us, int64_t from,
                     const char hash_hex[65], const char *sig_hex /* NULL: none */);
 
 /* Carried alone, as a JSON object without newline (inside `open` and the `carried` entry). */
 void sm_carried_write(struct sm_text *t, const struct sm_carried *c);
-/* SM_ESYNTAX: ret_why. What is left out is empty. Unknown sections and keys are passed over and
- * counted. */
+/* o: the object alone, or a whole `carried` entry. What is left out is empty (an unknown real: NaN).
+ * Unknown sections and keys are passed over and counted.
+ *   SM_ESYNTAX  ret_why; ret_carried is then of no use */
 SM_MUST_CHECK enum sm_status sm_carried_read(const json_t *o, struct sm_carried *ret_carried,
                                              unsigned *ret_passed_over, char ret_why[SM_REASON_SIZE]);
 
@@ -68,7 +72,9 @@ struct sm_entry {
     char k[24];
     int64_t n, t_ns, utc_us;
     enum sm_event_kind event; /* EVENT */
-    struct sm_input input;    /* INPUT; act.sheet is NULL: whoever replays parses act.sheet_text */
+    struct sm_input input;    /* INPUT; act.sheet is NULL: whoever replays parses act.sheet_text. An
+                               * act whose name is not known makes its entry UNKNOWN */
+    unsigned passed_over;     /* INPUT: keys that this program does not know */
     json_t *json;             /* the whole object, owned: json_decref */
 };
 
