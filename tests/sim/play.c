@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* play.c: see play.h. */
-#include "play.h"
+#include "sim/play.h"
 
 #include <errno.h>
 #include <math.h>
@@ -10,9 +10,9 @@
 #include <time.h>
 
 #include "base/time.h"
-#include "pty.h"
-#include "sim.h"
-#include "write.h"
+#include "sim/pty.h"
+#include "sim/sim.h"
+#include "sim/write.h"
 
 static const int64_t look_ns = 20 * SM_NS_PER_MS; /* how often it looks whether somebody came */
 static const int64_t nap_ns = 200 * SM_NS_PER_MS; /* the longest wait: a signal is seen by then */
@@ -25,10 +25,11 @@ static void stop(int number)
 }
 
 struct player {
-    const struct sm_play *how;
+    const struct sm_sim_play *how;
     FILE *events;
     struct sm_sim *sim;
-    struct sm_pty pty, next; /* the plug that is in; the one that goes in when the link is back */
+    struct sm_sim_pty pty,
+        next; /* the plug that is in; the one that goes in when the link is back */
     bool unplugged, scenario_down, replug_down, ended;
     unsigned replugs_left;
     int64_t began_ns, replug_t_ns; /* replug_t_ns: the next pull, or the plug's return */
@@ -42,11 +43,11 @@ static int64_t clock_ns(void)
     return (int64_t)now.tv_sec * SM_NS_PER_S + now.tv_nsec;
 }
 
-static void tell(const struct player *p, int64_t t_ns, const struct sm_step *step)
+static void tell(const struct player *p, int64_t t_ns, const struct sm_sim_step *step)
 {
     if (!p->events)
         return;
-    sm_write_event(p->events, t_ns, step);
+    sm_sim_write_event(p->events, t_ns, step);
     fflush(p->events);
 }
 
@@ -56,7 +57,7 @@ static enum sm_status plug_in(struct player *p)
     p->pty = p->next;
     p->next.fd = -1;
     if (p->how->link)
-        return sm_pty_link(&p->pty, p->how->link);
+        return sm_sim_pty_link(&p->pty, p->how->link);
     printf("%s\n", p->pty.path);
     fflush(stdout);
     return SM_OK;
@@ -65,13 +66,13 @@ static enum sm_status plug_in(struct player *p)
 /* The next terminal is made before this one goes, so that its name is another. */
 static enum sm_status pull_out(struct player *p)
 {
-    const enum sm_status status = sm_pty_open(&p->next);
+    const enum sm_status status = sm_sim_pty_open(&p->next);
 
     if (status != SM_OK)
         return status;
     if (p->how->link)
-        sm_pty_unlink(&p->pty, p->how->link);
-    sm_pty_close(&p->pty);
+        sm_sim_pty_unlink(&p->pty, p->how->link);
+    sm_sim_pty_close(&p->pty);
     p->unplugged = true;
     return SM_OK;
 }
@@ -108,17 +109,17 @@ static void sim_step(struct player *p)
 
     switch (sm_sim_next(p->sim, &t_ns, buf, sizeof buf, &n)) {
     case SM_SIM_BYTES:
-        sm_pty_send(&p->pty, buf, n);
+        sm_sim_pty_send(&p->pty, buf, n);
         break;
     case SM_SIM_DOWN:
         p->scenario_down = true;
-        tell(p, t_ns, sm_sim_step(p->sim));
+        tell(p, t_ns, sm_sim_step_now(p->sim));
         break;
     case SM_SIM_UP:
         p->scenario_down = false;
         break;
     case SM_SIM_STEP:
-        tell(p, t_ns, sm_sim_step(p->sim));
+        tell(p, t_ns, sm_sim_step_now(p->sim));
         break;
     case SM_SIM_END:
         p->ended = true;
@@ -133,7 +134,7 @@ static void sim_step(struct player *p)
 static void wait_a_little(const struct player *p, int64_t until_t_ns)
 {
     int64_t left_ns = until_t_ns - (clock_ns() - p->began_ns);
-    const bool heard = !p->unplugged && sm_pty_heard(&p->pty);
+    const bool heard = !p->unplugged && sm_sim_pty_heard(&p->pty);
     struct pollfd f = { p->pty.fd, POLLIN, 0 };
 
     if (left_ns > nap_ns)
@@ -149,7 +150,7 @@ static void wait_a_little(const struct player *p, int64_t until_t_ns)
 static void listen_to_questions(struct player *p)
 {
     char buf[256];
-    const size_t n = p->unplugged ? 0 : sm_pty_receive(&p->pty, buf, sizeof buf);
+    const size_t n = p->unplugged ? 0 : sm_sim_pty_receive(&p->pty, buf, sizeof buf);
 
     if (n > 0)
         sm_sim_ask(p->sim, clock_ns() - p->began_ns, buf, n);
@@ -162,13 +163,13 @@ static bool finished(const struct player *p)
 
 static enum sm_status run(struct player *p)
 {
-    while (p->how->wait && !told_to_stop && !sm_pty_heard(&p->pty)) {
+    while (p->how->wait && !told_to_stop && !sm_sim_pty_heard(&p->pty)) {
         const struct timespec nap = { 0, (long)look_ns };
         nanosleep(&nap, NULL);
     }
     p->began_ns = clock_ns();
     if (p->events)
-        sm_write_event_head(p->events);
+        sm_sim_write_event_head(p->events);
     while (!finished(p)) {
         const int64_t sim_t_ns = p->ended ? SM_NEVER : sm_sim_due(p->sim);
         const int64_t next_t_ns = sim_t_ns < p->replug_t_ns ? sim_t_ns : p->replug_t_ns;
@@ -200,7 +201,8 @@ static void catch_signals(void)
     sigaction(SIGPIPE, &act, NULL);
 }
 
-enum sm_status sm_play(const struct sm_scenario *sc, const struct sm_play *how, FILE *events)
+enum sm_status sm_sim_play(const struct sm_scenario *sc, const struct sm_sim_play *how,
+                           FILE *events)
 {
     struct player p = { .how = how, .events = events, .replug_t_ns = SM_NEVER };
 
@@ -212,16 +214,16 @@ enum sm_status sm_play(const struct sm_scenario *sc, const struct sm_play *how, 
     enum sm_status status = sm_sim_create(sc, &p.sim);
     if (status != SM_OK)
         return status;
-    status = sm_pty_open(&p.next);
+    status = sm_sim_pty_open(&p.next);
     if (status == SM_OK)
         status = plug_in(&p);
     if (status == SM_OK)
         status = run(&p);
     const int why = errno;
     if (how->link && p.pty.fd >= 0)
-        sm_pty_unlink(&p.pty, how->link);
-    sm_pty_close(&p.pty);
-    sm_pty_close(&p.next);
+        sm_sim_pty_unlink(&p.pty, how->link);
+    sm_sim_pty_close(&p.pty);
+    sm_sim_pty_close(&p.next);
     sm_sim_destroy(p.sim);
     errno = why;
     return status;

@@ -4,9 +4,9 @@
 #define SM_SIM_PLAY_H
 #include <stdio.h>
 
-#include "scenario.h"
+#include "sim/scenario.h"
 
-struct sm_play {
+struct sm_sim_play {
     const char *link; /* NULL: the path is printed */
     bool wait;        /* begin when the terminal is first opened */
     bool stay;        /* stay on the line after the end, until told to stop */
@@ -19,6 +19,6 @@ struct sm_play {
  * happens, as it happens; NULL: nothing.
  *   SM_EIO   no terminal, or no link: errno says why
  *   SM_ENOMEM */
-SM_MUST_CHECK enum sm_status sm_play(const struct sm_scenario *sc, const struct sm_play *how,
-                                     FILE *events);
+SM_MUST_CHECK enum sm_status sm_sim_play(const struct sm_scenario *sc,
+                                         const struct sm_sim_play *how, FILE *events);
 #endif

@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* prng.c: see prng.h. */
-#include "prng.h"
+#include "sim/prng.h"
 
 #include <math.h>
 
@@ -13,12 +13,12 @@ static uint64_t splitmix(uint64_t *x)
     return z ^ (z >> 31);
 }
 
-void sm_prng_init(struct sm_prng *p, uint64_t seed, uint64_t stream)
+void sm_sim_prng_init(struct sm_sim_prng *p, uint64_t seed, uint64_t stream)
 {
     uint64_t x = seed;
     const uint64_t a = splitmix(&x);
     x = a ^ stream; /* streams of one seed start far apart */
-    *p = (struct sm_prng){ { 0 }, false, 0.0 };
+    *p = (struct sm_sim_prng){ { 0 }, false, 0.0 };
     for (int i = 0; i < 4; i++)
         p->s[i] = splitmix(&x);
 }
@@ -28,7 +28,7 @@ static uint64_t rotate(uint64_t x, int k)
     return (x << k) | (x >> (64 - k));
 }
 
-uint64_t sm_prng_next(struct sm_prng *p)
+uint64_t sm_sim_prng_next(struct sm_sim_prng *p)
 {
     const uint64_t out = rotate(p->s[1] * 5, 7) * 9;
     const uint64_t shifted = p->s[1] << 17;
@@ -42,22 +42,22 @@ uint64_t sm_prng_next(struct sm_prng *p)
     return out;
 }
 
-double sm_prng_uniform(struct sm_prng *p)
+double sm_sim_prng_uniform(struct sm_sim_prng *p)
 {
-    return (double)(sm_prng_next(p) >> 11) * 0x1p-53;
+    return (double)(sm_sim_prng_next(p) >> 11) * 0x1p-53;
 }
 
-double sm_prng_between(struct sm_prng *p, double from, double to)
+double sm_sim_prng_between(struct sm_sim_prng *p, double from, double to)
 {
-    return from + (to - from) * sm_prng_uniform(p);
+    return from + (to - from) * sm_sim_prng_uniform(p);
 }
 
-double sm_prng_log_between(struct sm_prng *p, double from, double to)
+double sm_sim_prng_log_between(struct sm_sim_prng *p, double from, double to)
 {
-    return from * exp(log(to / from) * sm_prng_uniform(p));
+    return from * exp(log(to / from) * sm_sim_prng_uniform(p));
 }
 
-double sm_prng_normal(struct sm_prng *p)
+double sm_sim_prng_normal(struct sm_sim_prng *p)
 {
     double u, v, q;
 
@@ -66,8 +66,8 @@ double sm_prng_normal(struct sm_prng *p)
         return p->spare;
     }
     do {
-        u = 2 * sm_prng_uniform(p) - 1;
-        v = 2 * sm_prng_uniform(p) - 1;
+        u = 2 * sm_sim_prng_uniform(p) - 1;
+        v = 2 * sm_sim_prng_uniform(p) - 1;
         q = u * u + v * v;
     } while (q >= 1 || q == 0);
     const double stretch = sqrt(-2 * log(q) / q);
@@ -76,12 +76,12 @@ double sm_prng_normal(struct sm_prng *p)
     return u * stretch;
 }
 
-bool sm_prng_chance(struct sm_prng *p, double probability)
+bool sm_sim_prng_chance(struct sm_sim_prng *p, double probability)
 {
-    return sm_prng_uniform(p) < probability;
+    return sm_sim_prng_uniform(p) < probability;
 }
 
-unsigned sm_prng_below(struct sm_prng *p, unsigned n)
+unsigned sm_sim_prng_below(struct sm_sim_prng *p, unsigned n)
 {
-    return (unsigned)(sm_prng_uniform(p) * (double)n);
+    return (unsigned)(sm_sim_prng_uniform(p) * (double)n);
 }

@@ -7,7 +7,7 @@
 #include <stdbool.h>
 #include <stdint.h>
 
-struct sm_prng {
+struct sm_sim_prng {
     uint64_t s[4];
     bool has_spare;
     double spare; /* the polar method makes two at a time */
@@ -15,12 +15,13 @@ struct sm_prng {
 
 /* stream: independent sequences of one seed (noise, air, jitter …), so that one does not move when
  * more is drawn from another. */
-void sm_prng_init(struct sm_prng *p, uint64_t seed, uint64_t stream);
-uint64_t sm_prng_next(struct sm_prng *p);
-double sm_prng_uniform(struct sm_prng *p);                             /* [0, 1) */
-double sm_prng_between(struct sm_prng *p, double from, double to);     /* uniform */
-double sm_prng_log_between(struct sm_prng *p, double from, double to); /* log-uniform, from > 0 */
-double sm_prng_normal(struct sm_prng *p);                              /* mean 0, sd 1 */
-bool sm_prng_chance(struct sm_prng *p, double probability);
-unsigned sm_prng_below(struct sm_prng *p, unsigned n); /* 0 … n-1 */
+void sm_sim_prng_init(struct sm_sim_prng *p, uint64_t seed, uint64_t stream);
+uint64_t sm_sim_prng_next(struct sm_sim_prng *p);
+double sm_sim_prng_uniform(struct sm_sim_prng *p);                         /* [0, 1) */
+double sm_sim_prng_between(struct sm_sim_prng *p, double from, double to); /* uniform */
+double sm_sim_prng_log_between(struct sm_sim_prng *p, double from,
+                               double to);        /* log-uniform, from > 0 */
+double sm_sim_prng_normal(struct sm_sim_prng *p); /* mean 0, sd 1 */
+bool sm_sim_prng_chance(struct sm_sim_prng *p, double probability);
+unsigned sm_sim_prng_below(struct sm_sim_prng *p, unsigned n); /* 0 … n-1 */
 #endif

@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* probe.c: see probe.h. */
-#include "probe.h"
+#include "sim/probe.h"
 
 #include <math.h>
 #include <stdlib.h>
@@ -19,58 +19,58 @@ static double signal_of(const struct sm_scenario *sc, double value, enum sm_unit
     return sm_scenario_signal(sc, value, unit, celsius, &signal) == SM_OK ? signal : 0;
 }
 
-void sm_probe_start(struct sm_probe *p, const struct sm_scenario *sc)
+void sm_sim_probe_start(struct sm_sim_probe *p, const struct sm_scenario *sc)
 {
     const double start = signal_of(sc, sc->start_value, sc->start_unit, sc->celsius);
 
-    *p = (struct sm_probe){ .response = sc->response,
-                            .next_response = sc->response,
-                            .from = start,
-                            .to = start,
-                            .celsius_from = sc->celsius,
-                            .celsius_to = sc->celsius,
-                            .celsius_s = sc->probe_response_s,
-                            .drift_per_s = sc->drift_per_s };
+    *p = (struct sm_sim_probe){ .response = sc->response,
+                                .next_response = sc->response,
+                                .from = start,
+                                .to = start,
+                                .celsius_from = sc->celsius,
+                                .celsius_to = sc->celsius,
+                                .celsius_s = sc->probe_response_s,
+                                .drift_per_s = sc->drift_per_s };
 }
 
-static double without_drift(const struct sm_probe *p, int64_t t_ns)
+static double without_drift(const struct sm_sim_probe *p, int64_t t_ns)
 {
     const double t_s = seconds(p->dipped_t_ns, t_ns);
 
-    return p->to + p->to_per_s * t_s + sm_response_left(&p->response, p->from - p->to, t_s);
+    return p->to + p->to_per_s * t_s + sm_sim_response_left(&p->response, p->from - p->to, t_s);
 }
 
-double sm_probe_drift(const struct sm_probe *p, int64_t t_ns)
+double sm_sim_probe_drift(const struct sm_sim_probe *p, int64_t t_ns)
 {
     return p->drift + p->drift_per_s * seconds(p->drift_t_ns, t_ns);
 }
 
-double sm_probe_signal(const struct sm_probe *p, int64_t t_ns)
+double sm_sim_probe_signal(const struct sm_sim_probe *p, int64_t t_ns)
 {
-    return without_drift(p, t_ns) + sm_probe_drift(p, t_ns);
+    return without_drift(p, t_ns) + sm_sim_probe_drift(p, t_ns);
 }
 
-double sm_probe_end(const struct sm_probe *p, int64_t t_ns)
+double sm_sim_probe_end(const struct sm_sim_probe *p, int64_t t_ns)
 {
-    return p->to + p->to_per_s * seconds(p->dipped_t_ns, t_ns) + sm_probe_drift(p, t_ns);
+    return p->to + p->to_per_s * seconds(p->dipped_t_ns, t_ns) + sm_sim_probe_drift(p, t_ns);
 }
 
-double sm_probe_celsius(const struct sm_probe *p, int64_t t_ns)
+double sm_sim_probe_celsius(const struct sm_sim_probe *p, int64_t t_ns)
 {
     const double t_s = seconds(p->celsius_t_ns, t_ns);
 
     return p->celsius_to + (p->celsius_from - p->celsius_to) * exp(-t_s / p->celsius_s);
 }
 
-static void warm_towards(struct sm_probe *p, double celsius, int64_t t_ns)
+static void warm_towards(struct sm_sim_probe *p, double celsius, int64_t t_ns)
 {
-    p->celsius_from = sm_probe_celsius(p, t_ns);
+    p->celsius_from = sm_sim_probe_celsius(p, t_ns);
     p->celsius_to = celsius;
     p->celsius_t_ns = t_ns;
 }
 
-static void dip(struct sm_probe *p, const struct sm_scenario *sc, const struct sm_step *step,
-                int64_t t_ns)
+static void dip(struct sm_sim_probe *p, const struct sm_scenario *sc,
+                const struct sm_sim_step *step, int64_t t_ns)
 {
     const double from = without_drift(p, t_ns);
     const double little = 1e-6 * fabs(step->value) + 1e-9;
@@ -87,33 +87,33 @@ static void dip(struct sm_probe *p, const struct sm_scenario *sc, const struct s
     p->response = p->next_response;
 }
 
-void sm_probe_step(struct sm_probe *p, const struct sm_scenario *sc, const struct sm_step *step,
-                   int64_t t_ns)
+void sm_sim_probe_step(struct sm_sim_probe *p, const struct sm_scenario *sc,
+                       const struct sm_sim_step *step, int64_t t_ns)
 {
     switch (step->kind) {
-    case SM_STEP_IN:
+    case SM_SIM_STEP_IN:
         p->item = step;
         dip(p, sc, step, t_ns);
         break;
-    case SM_STEP_RINSE:
+    case SM_SIM_STEP_RINSE:
         dip(p, sc, step, t_ns);
         break;
-    case SM_STEP_BACK:
+    case SM_SIM_STEP_BACK:
         if (p->solution == p->item) /* the film on it was that beaker's all the time */
             warm_towards(p, p->item->celsius, t_ns);
         else
             dip(p, sc, p->item, t_ns);
         break;
-    case SM_STEP_AIR:
-    case SM_STEP_LIFT:
+    case SM_SIM_STEP_AIR:
+    case SM_SIM_STEP_LIFT:
         warm_towards(p, sc->celsius, t_ns);
         break;
-    case SM_STEP_DRIFT:
-        p->drift = sm_probe_drift(p, t_ns);
+    case SM_SIM_STEP_DRIFT:
+        p->drift = sm_sim_probe_drift(p, t_ns);
         p->drift_per_s = step->amount;
         p->drift_t_ns = t_ns;
         break;
-    case SM_STEP_RESPONSE:
+    case SM_SIM_STEP_RESPONSE:
         p->next_response = step->response;
         break;
     default:
@@ -121,16 +121,16 @@ void sm_probe_step(struct sm_probe *p, const struct sm_scenario *sc, const struc
     }
 }
 
-int64_t sm_step_span_ns(const struct sm_step *step)
+int64_t sm_sim_step_span_ns(const struct sm_sim_step *step)
 {
     return (int64_t)llround(step->span_s * 1e9);
 }
 
 /* What the walk through the steps keeps in mind. */
 struct walk {
-    struct sm_probe probe;
-    struct sm_stay *item; /* the last beaker; NULL: none yet */
-    bool in_item;         /* the probe is in it */
+    struct sm_sim_probe probe;
+    struct sm_sim_stay *item; /* the last beaker; NULL: none yet */
+    bool in_item;             /* the probe is in it */
     int64_t calm_from_t_ns;
     unsigned items;
 };
@@ -143,47 +143,47 @@ static void calm_ends(struct walk *w, int64_t t_ns)
 
 static double settle_s(const struct walk *w, const struct sm_scenario *sc)
 {
-    return sm_response_settle_s(&w->probe.response, w->probe.from - w->probe.to, sc->tolerance);
+    return sm_sim_response_settle_s(&w->probe.response, w->probe.from - w->probe.to, sc->tolerance);
 }
 
-static void dipped(struct walk *w, const struct sm_scenario *sc, const struct sm_step *step,
-                   struct sm_stay *stay)
+static void dipped(struct walk *w, const struct sm_scenario *sc, const struct sm_sim_step *step,
+                   struct sm_sim_stay *stay)
 {
     stay->value = step->value;
     stay->unit = step->unit;
     stay->celsius = step->celsius;
-    stay->end = sm_probe_end(&w->probe, stay->end_t_ns);
+    stay->end = sm_sim_probe_end(&w->probe, stay->end_t_ns);
     stay->settle_s = settle_s(w, sc);
 }
 
 /* The stay that a step makes, if any, into *stay; gives whether it made one. */
-static bool walk_step(struct walk *w, const struct sm_scenario *sc, const struct sm_step *step,
-                      int64_t t_ns, struct sm_stay *stay)
+static bool walk_step(struct walk *w, const struct sm_scenario *sc, const struct sm_sim_step *step,
+                      int64_t t_ns, struct sm_sim_stay *stay)
 {
-    const int64_t end_t_ns = t_ns + sm_step_span_ns(step);
-    const bool leaves = step->kind == SM_STEP_IN || step->kind == SM_STEP_AIR ||
-                        step->kind == SM_STEP_LIFT || step->kind == SM_STEP_RINSE;
-    const bool disturbs = step->kind == SM_STEP_BUBBLE || step->kind == SM_STEP_SILENCE ||
-                          step->kind == SM_STEP_UNPLUG || step->kind == SM_STEP_WORD;
+    const int64_t end_t_ns = t_ns + sm_sim_step_span_ns(step);
+    const bool leaves = step->kind == SM_SIM_STEP_IN || step->kind == SM_SIM_STEP_AIR ||
+                        step->kind == SM_SIM_STEP_LIFT || step->kind == SM_SIM_STEP_RINSE;
+    const bool disturbs = step->kind == SM_SIM_STEP_BUBBLE || step->kind == SM_SIM_STEP_SILENCE ||
+                          step->kind == SM_SIM_STEP_UNPLUG || step->kind == SM_SIM_STEP_WORD;
 
     if (leaves || disturbs)
         calm_ends(w, t_ns);
     if (leaves)
         w->in_item = false;
-    sm_probe_step(&w->probe, sc, step, t_ns);
-    *stay = (struct sm_stay){ .kind = step->kind, .name = "", .celsius = sc->celsius };
+    sm_sim_probe_step(&w->probe, sc, step, t_ns);
+    *stay = (struct sm_sim_stay){ .kind = step->kind, .name = "", .celsius = sc->celsius };
     stay->begin_t_ns = t_ns;
     stay->end_t_ns = end_t_ns;
-    if (step->kind == SM_STEP_BACK && !w->in_item) {
+    if (step->kind == SM_SIM_STEP_BACK && !w->in_item) {
         const double again_s = settle_s(w, sc); /* longer than before if it was elsewhere */
         if (w->probe.dipped_t_ns == t_ns && again_s > w->item->settle_s)
             w->item->settle_s = again_s;
         w->in_item = true;
         w->calm_from_t_ns = t_ns;
     }
-    if (step->kind == SM_STEP_IN || step->kind == SM_STEP_RINSE)
+    if (step->kind == SM_SIM_STEP_IN || step->kind == SM_SIM_STEP_RINSE)
         dipped(w, sc, step, stay);
-    if (step->kind == SM_STEP_IN) {
+    if (step->kind == SM_SIM_STEP_IN) {
         stay->item = ++w->items;
         stay->name = step->name;
         stay->role = step->role;
@@ -192,36 +192,36 @@ static bool walk_step(struct walk *w, const struct sm_scenario *sc, const struct
         w->calm_from_t_ns = t_ns;
     } else if (w->in_item) { /* time goes on in the beaker */
         w->item->end_t_ns = end_t_ns;
-        w->item->end = sm_probe_end(&w->probe, end_t_ns);
+        w->item->end = sm_sim_probe_end(&w->probe, end_t_ns);
         if (disturbs)
             w->calm_from_t_ns = end_t_ns;
     }
     return leaves || disturbs;
 }
 
-enum sm_status sm_truth_create(const struct sm_scenario *sc, struct sm_truth *ret_truth)
+enum sm_status sm_sim_truth_create(const struct sm_scenario *sc, struct sm_sim_truth *ret_truth)
 {
     struct walk w = { .item = NULL };
-    struct sm_truth t = { NULL, 0, 0 };
+    struct sm_sim_truth t = { NULL, 0, 0 };
 
     t.stay = calloc(sc->n_steps + 1, sizeof *t.stay);
     if (!t.stay)
         return SM_ENOMEM;
-    sm_probe_start(&w.probe, sc);
+    sm_sim_probe_start(&w.probe, sc);
     for (size_t i = 0; i < sc->n_steps; i++) {
         if (walk_step(&w, sc, &sc->step[i], t.end_t_ns, &t.stay[t.n]))
             t.n++;
-        t.end_t_ns += sm_step_span_ns(&sc->step[i]);
+        t.end_t_ns += sm_sim_step_span_ns(&sc->step[i]);
     }
     calm_ends(&w, t.end_t_ns);
     for (size_t i = 0; i < t.n; i++)
-        t.stay[i].stayed_three = t.stay[i].kind == SM_STEP_IN &&
+        t.stay[i].stayed_three = t.stay[i].kind == SM_SIM_STEP_IN &&
                                  t.stay[i].calm_s >= 3 * fmax(t.stay[i].settle_s, sc->dwell_s);
     *ret_truth = t;
     return SM_OK;
 }
 
-void sm_truth_free(struct sm_truth *t)
+void sm_sim_truth_free(struct sm_sim_truth *t)
 {
     free(t->stay);
     t->stay = NULL;

@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* pty.c: see pty.h. */
-#include "pty.h"
+#include "sim/pty.h"
 
 #include <errno.h>
 #include <fcntl.h>
@@ -14,7 +14,7 @@
 
 /* Raw, and once opened and closed: only then does the meter's end see "hung up" while nobody is
  * there. */
-static bool prepare(const struct sm_pty *p)
+static bool prepare(const struct sm_sim_pty *p)
 {
     struct termios how;
     const int fd = open(p->path, O_RDWR | O_NOCTTY | O_CLOEXEC);
@@ -30,9 +30,9 @@ static bool prepare(const struct sm_pty *p)
     return done;
 }
 
-enum sm_status sm_pty_open(struct sm_pty *ret_pty)
+enum sm_status sm_sim_pty_open(struct sm_sim_pty *ret_pty)
 {
-    struct sm_pty p = { -1, "" };
+    struct sm_sim_pty p = { -1, "" };
 
     p.fd = posix_openpt(O_RDWR | O_NOCTTY | O_NONBLOCK | O_CLOEXEC);
     if (p.fd < 0)
@@ -48,23 +48,23 @@ enum sm_status sm_pty_open(struct sm_pty *ret_pty)
     return SM_OK;
 }
 
-void sm_pty_close(struct sm_pty *p)
+void sm_sim_pty_close(struct sm_sim_pty *p)
 {
     if (p->fd >= 0)
         close(p->fd);
     p->fd = -1;
 }
 
-bool sm_pty_heard(const struct sm_pty *p)
+bool sm_sim_pty_heard(const struct sm_sim_pty *p)
 {
     struct pollfd f = { p->fd, POLLOUT, 0 };
 
     return p->fd >= 0 && poll(&f, 1, 0) >= 0 && !(f.revents & (POLLHUP | POLLERR));
 }
 
-void sm_pty_send(const struct sm_pty *p, const char *bytes, size_t n)
+void sm_sim_pty_send(const struct sm_sim_pty *p, const char *bytes, size_t n)
 {
-    if (!sm_pty_heard(p))
+    if (!sm_sim_pty_heard(p))
         return;
     while (n > 0) {
         const ssize_t done = write(p->fd, bytes, n);
@@ -75,14 +75,14 @@ void sm_pty_send(const struct sm_pty *p, const char *bytes, size_t n)
     }
 }
 
-size_t sm_pty_receive(const struct sm_pty *p, char *buf, size_t cap)
+size_t sm_sim_pty_receive(const struct sm_sim_pty *p, char *buf, size_t cap)
 {
     const ssize_t n = p->fd < 0 ? -1 : read(p->fd, buf, cap);
 
     return n > 0 ? (size_t)n : 0;
 }
 
-enum sm_status sm_pty_link(const struct sm_pty *p, const char *link)
+enum sm_status sm_sim_pty_link(const struct sm_sim_pty *p, const char *link)
 {
     char fresh[4096];
     struct stat there;
@@ -108,9 +108,9 @@ enum sm_status sm_pty_link(const struct sm_pty *p, const char *link)
     return SM_OK;
 }
 
-void sm_pty_unlink(const struct sm_pty *p, const char *link)
+void sm_sim_pty_unlink(const struct sm_sim_pty *p, const char *link)
 {
-    char to[SM_PTY_PATH];
+    char to[SM_SIM_PTY_PATH];
     const ssize_t n = readlink(link, to, sizeof to);
 
     if (n > 0 && (size_t)n == strlen(p->path) && memcmp(to, p->path, (size_t)n) == 0)

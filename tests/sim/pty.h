@@ -8,27 +8,27 @@
 
 #include "base/status.h"
 
-#define SM_PTY_PATH 64
+#define SM_SIM_PTY_PATH 64
 
-struct sm_pty {
-    int fd;                 /* the meter's end, non-blocking; -1: closed */
-    char path[SM_PTY_PATH]; /* the other end */
+struct sm_sim_pty {
+    int fd;                     /* the meter's end, non-blocking; -1: closed */
+    char path[SM_SIM_PTY_PATH]; /* the other end */
 };
 
 /* A new one, raw (no echo). SM_EIO: errno says why. */
-SM_MUST_CHECK enum sm_status sm_pty_open(struct sm_pty *ret_pty);
-void sm_pty_close(struct sm_pty *p); /* whoever has the other end open sees it hang up */
+SM_MUST_CHECK enum sm_status sm_sim_pty_open(struct sm_sim_pty *ret_pty);
+void sm_sim_pty_close(struct sm_sim_pty *p); /* whoever has the other end open sees it hang up */
 
-bool sm_pty_heard(const struct sm_pty *p); /* somebody has the other end open */
+bool sm_sim_pty_heard(const struct sm_sim_pty *p); /* somebody has the other end open */
 
 /* Sends what can be sent now; the rest is lost. */
-void sm_pty_send(const struct sm_pty *p, const char *bytes, size_t n);
+void sm_sim_pty_send(const struct sm_sim_pty *p, const char *bytes, size_t n);
 /* What was sent to the meter, up to cap bytes; 0: nothing now. */
-size_t sm_pty_receive(const struct sm_pty *p, char *buf, size_t cap);
+size_t sm_sim_pty_receive(const struct sm_sim_pty *p, char *buf, size_t cap);
 
 /* Makes link point to the other end, in one move; refuses to replace anything but a link.
  *   SM_EIO  errno says why */
-SM_MUST_CHECK enum sm_status sm_pty_link(const struct sm_pty *p, const char *link);
+SM_MUST_CHECK enum sm_status sm_sim_pty_link(const struct sm_sim_pty *p, const char *link);
 /* Takes link away if it still points to this one. */
-void sm_pty_unlink(const struct sm_pty *p, const char *link);
+void sm_sim_pty_unlink(const struct sm_sim_pty *p, const char *link);
 #endif

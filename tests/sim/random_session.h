@@ -4,7 +4,7 @@
  * random; its truth is that of any scenario (probe.h). In mV. */
 #ifndef SM_SIM_RANDOM_SESSION_H
 #define SM_SIM_RANDOM_SESSION_H
-#include "scenario.h"
+#include "sim/scenario.h"
 
 struct sm_random_session {
     unsigned beakers;
@@ -14,7 +14,7 @@ struct sm_random_session {
     double noise_from, noise_to;   /* mV, standard deviation, log-uniform */
     bool white_only;               /* else white, ar, hum or telegraph */
     double display_step;           /* mV */
-    unsigned responses;            /* 1 << SM_RESPONSE_…, those that may be drawn */
+    unsigned responses;            /* 1 << SM_SIM_RESPONSE_…, those that may be drawn */
     double fast_from_s, fast_to_s; /* log-uniform; the square-root form a hundredth of it */
     double longest_settle_s;       /* of twice the largest step: slower ones are drawn again */
     double step_from, step_to;     /* mV from beaker to beaker, log-uniform */

@@ -1,23 +1,23 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* scenario.c: what a simulated meter lives through; scenario_read.c reads it from text. */
-#include "scenario.h"
+#include "sim/scenario.h"
 
 #include <stdlib.h>
 #include <string.h>
 
-const char *sm_step_name(enum sm_step_kind k)
+const char *sm_sim_step_name(enum sm_sim_step_kind k)
 {
-    static const char *const name[SM_STEP_KINDS] = {
+    static const char *const name[SM_SIM_STEP_KINDS] = {
         "in",   "back",    "air", "lift",     "rinse", "bubble", "stray", "silence", "unplug",
         "word", "rubbish", "say", "halfline", "late",  "drift",  "noise", "response"
     };
     return name[k];
 }
 
-const char *sm_role_name(enum sm_role r)
+const char *sm_sim_role_name(enum sm_sim_role r)
 {
-    static const char *const name[SM_ROLE_COUNT] = { "sample", "standard",  "check",
-                                                     "blank",  "duplicate", "spike" };
+    static const char *const name[SM_SIM_ROLE_COUNT] = { "sample", "standard",  "check",
+                                                         "blank",  "duplicate", "spike" };
     return name[r];
 }
 
@@ -27,16 +27,16 @@ void sm_scenario_init(struct sm_scenario *sc)
         .seed = 1,
         .signal = SM_UNIT_MV,
         .rate_per_s = 1,
-        .response = { SM_RESPONSE_EXPONENTIAL, 1, 0, 0 },
+        .response = { SM_SIM_RESPONSE_EXPONENTIAL, 1, 0, 0 },
         .celsius = 20,
         .probe_response_s = 3,
-        .open = { SM_OPEN_WANDER, 300, "" },
+        .open = { SM_SIM_OPEN_WANDER, 300, "" },
         .rinse_unit = SM_UNIT_MV,
         .start_unit = SM_UNIT_MV,
         .tolerance = 0.6,
         .answer_s = 0.1,
     };
-    const bool found = sm_shape_known("plain-mv", &sc->shape);
+    const bool found = sm_sim_shape_known("plain-mv", &sc->shape);
     (void)found;
 }
 
@@ -53,7 +53,7 @@ enum sm_status sm_scenario_reserve(struct sm_scenario *sc, size_t n)
         return SM_EFULL;
     if (n <= sc->cap_steps)
         return SM_OK;
-    struct sm_step *more = realloc(sc->step, n * sizeof *more);
+    struct sm_sim_step *more = realloc(sc->step, n * sizeof *more);
     if (!more)
         return SM_ENOMEM;
     sc->step = more;
@@ -61,7 +61,7 @@ enum sm_status sm_scenario_reserve(struct sm_scenario *sc, size_t n)
     return SM_OK;
 }
 
-enum sm_status sm_scenario_add(struct sm_scenario *sc, const struct sm_step *step)
+enum sm_status sm_scenario_add(struct sm_scenario *sc, const struct sm_sim_step *step)
 {
     if (sc->n_steps == sc->cap_steps) {
         size_t cap = sc->cap_steps == 0 ? 64 : 2 * sc->cap_steps;
@@ -93,12 +93,12 @@ double sm_scenario_wide(const struct sm_scenario *sc)
 static enum sm_unit felt_unit(const struct sm_scenario *sc)
 {
     switch (sc->electrode.kind) {
-    case SM_ELECTRODE_PH:
+    case SM_SIM_ELECTRODE_PH:
         return SM_UNIT_PH;
-    case SM_ELECTRODE_LOG:
-    case SM_ELECTRODE_LINE:
+    case SM_SIM_ELECTRODE_LOG:
+    case SM_SIM_ELECTRODE_LINE:
         return SM_UNIT_MG_L;
-    case SM_ELECTRODE_NONE:
+    case SM_SIM_ELECTRODE_NONE:
         break;
     }
     return sc->signal;
@@ -114,8 +114,8 @@ enum sm_status sm_scenario_signal(const struct sm_scenario *sc, double value, en
         return SM_OK;
     }
     if (sm_quantity_in((struct sm_quantity){ value, unit }, felt_unit(sc), &v) != SM_OK ||
-        (sc->electrode.kind == SM_ELECTRODE_LOG && !(v > 0)))
+        (sc->electrode.kind == SM_SIM_ELECTRODE_LOG && !(v > 0)))
         return SM_EINVAL;
-    *ret_signal = sm_electrode_signal(&sc->electrode, v, celsius);
+    *ret_signal = sm_sim_electrode_signal(&sc->electrode, v, celsius);
     return SM_OK;
 }

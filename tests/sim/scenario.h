@@ -48,100 +48,105 @@
 
 #include "base/blame.h"
 #include "base/text.h"
-#include "electrode.h"
-#include "shape.h"
+#include "sim/electrode.h"
+#include "sim/shape.h"
 
 #define SM_SCENARIO_BYTES_MAX 65536 /* of a scenario file */
 #define SM_SCENARIO_STEPS_MAX 100000
 #define SM_SCENARIO_WORD 17
 
-enum sm_noise_kind { SM_NOISE_WHITE, SM_NOISE_AR, SM_NOISE_HUM, SM_NOISE_TELEGRAPH };
+enum sm_sim_noise_kind {
+    SM_SIM_NOISE_WHITE,
+    SM_SIM_NOISE_AR,
+    SM_SIM_NOISE_HUM,
+    SM_SIM_NOISE_TELEGRAPH
+};
 
-struct sm_noise {
-    enum sm_noise_kind kind;
+struct sm_sim_noise {
+    enum sm_sim_noise_kind kind;
     double sd;  /* of one reading, in the signal's unit */
     double how; /* AR: the lag-1 coefficient; HUM: /s; TELEGRAPH: chance of a flip per reading */
 };
 
-enum sm_open_kind { SM_OPEN_WANDER, SM_OPEN_RAIL, SM_OPEN_WORD };
+enum sm_sim_open_kind { SM_SIM_OPEN_WANDER, SM_SIM_OPEN_RAIL, SM_SIM_OPEN_WORD };
 
-struct sm_open {
-    enum sm_open_kind kind;
+struct sm_sim_open {
+    enum sm_sim_open_kind kind;
     double level; /* WANDER: how wide, a standard deviation; RAIL: the value; signal */
     char word[SM_SCENARIO_WORD];
 };
 
-enum sm_step_kind {
-    SM_STEP_IN,
-    SM_STEP_BACK,
-    SM_STEP_AIR,
-    SM_STEP_LIFT,
-    SM_STEP_RINSE,
-    SM_STEP_BUBBLE,
-    SM_STEP_STRAY,
-    SM_STEP_SILENCE,
-    SM_STEP_UNPLUG,
-    SM_STEP_WORD,
-    SM_STEP_RUBBISH,
-    SM_STEP_SAY,
-    SM_STEP_HALFLINE,
-    SM_STEP_LATE,
-    SM_STEP_DRIFT,
-    SM_STEP_NOISE,
-    SM_STEP_RESPONSE,
-    SM_STEP_KINDS
+enum sm_sim_step_kind {
+    SM_SIM_STEP_IN,
+    SM_SIM_STEP_BACK,
+    SM_SIM_STEP_AIR,
+    SM_SIM_STEP_LIFT,
+    SM_SIM_STEP_RINSE,
+    SM_SIM_STEP_BUBBLE,
+    SM_SIM_STEP_STRAY,
+    SM_SIM_STEP_SILENCE,
+    SM_SIM_STEP_UNPLUG,
+    SM_SIM_STEP_WORD,
+    SM_SIM_STEP_RUBBISH,
+    SM_SIM_STEP_SAY,
+    SM_SIM_STEP_HALFLINE,
+    SM_SIM_STEP_LATE,
+    SM_SIM_STEP_DRIFT,
+    SM_SIM_STEP_NOISE,
+    SM_SIM_STEP_RESPONSE,
+    SM_SIM_STEP_KINDS
 };
-const char *sm_step_name(enum sm_step_kind k);
+const char *sm_sim_step_name(enum sm_sim_step_kind k);
 
-enum sm_role {
-    SM_ROLE_SAMPLE,
-    SM_ROLE_STANDARD,
-    SM_ROLE_CHECK,
-    SM_ROLE_BLANK,
-    SM_ROLE_DUPLICATE,
-    SM_ROLE_SPIKE,
-    SM_ROLE_COUNT
+enum sm_sim_role {
+    SM_SIM_ROLE_SAMPLE,
+    SM_SIM_ROLE_STANDARD,
+    SM_SIM_ROLE_CHECK,
+    SM_SIM_ROLE_BLANK,
+    SM_SIM_ROLE_DUPLICATE,
+    SM_SIM_ROLE_SPIKE,
+    SM_SIM_ROLE_COUNT
 };
-const char *sm_role_name(enum sm_role r);
+const char *sm_sim_role_name(enum sm_sim_role r);
 
-struct sm_step {
-    enum sm_step_kind kind;
-    double span_s;               /* how long; 0 for those that take no time */
-    char name[SM_NAME_SIZE];     /* IN */
-    enum sm_role role;           /* IN */
-    double value;                /* IN, RINSE: of the solution */
-    enum sm_unit unit;           /* IN, RINSE: of value */
-    double per_s;                /* IN: the sample's own change, unit/s */
-    double celsius;              /* IN, RINSE */
-    double amount;               /* BUBBLE, STRAY (0: at random): signal; DRIFT: signal/s */
-    unsigned count;              /* STRAY, RUBBISH, SAY */
-    bool printable;              /* RUBBISH */
-    struct sm_open open;         /* AIR, LIFT, WORD */
-    struct sm_response response; /* RESPONSE */
-    struct sm_noise noise;       /* NOISE */
-    struct sm_shape_text text;   /* SAY */
+struct sm_sim_step {
+    enum sm_sim_step_kind kind;
+    double span_s;                   /* how long; 0 for those that take no time */
+    char name[SM_NAME_SIZE];         /* IN */
+    enum sm_sim_role role;           /* IN */
+    double value;                    /* IN, RINSE: of the solution */
+    enum sm_unit unit;               /* IN, RINSE: of value */
+    double per_s;                    /* IN: the sample's own change, unit/s */
+    double celsius;                  /* IN, RINSE */
+    double amount;                   /* BUBBLE, STRAY (0: at random): signal; DRIFT: signal/s */
+    unsigned count;                  /* STRAY, RUBBISH, SAY */
+    bool printable;                  /* RUBBISH */
+    struct sm_sim_open open;         /* AIR, LIFT, WORD */
+    struct sm_sim_response response; /* RESPONSE */
+    struct sm_sim_noise noise;       /* NOISE */
+    struct sm_sim_shape_text text;   /* SAY */
 };
 
 struct sm_scenario {
     uint64_t seed;
     enum sm_unit signal;
     double rate_per_s, jitter_s, dropout; /* dropout: 0 … 1 */
-    struct sm_noise noise;
+    struct sm_sim_noise noise;
     double display_step; /* 0: as the shape's decimals have it */
-    struct sm_response response;
+    struct sm_sim_response response;
     double drift_per_s; /* signal/s */
     double celsius, probe_response_s;
-    struct sm_electrode electrode;
-    struct sm_open open;
+    struct sm_sim_electrode electrode;
+    struct sm_sim_open open;
     double rinse_value; /* rinse water, in rinse_unit */
     enum sm_unit rinse_unit;
     double start_value; /* in start_unit */
     enum sm_unit start_unit;
     double tolerance, dwell_s; /* signal; s: what the truth is told against */
-    struct sm_shape shape;
+    struct sm_sim_shape shape;
     double answer_s;
     unsigned split; /* bytes; 0: whole lines */
-    struct sm_step *step;
+    struct sm_sim_step *step;
     size_t n_steps, cap_steps;
 };
 
@@ -153,7 +158,8 @@ void sm_scenario_free(struct sm_scenario *sc);
 SM_MUST_CHECK enum sm_status sm_scenario_reserve(struct sm_scenario *sc, size_t n);
 
 /* Adds a step. SM_ENOMEM; SM_EFULL: SM_SCENARIO_STEPS_MAX. */
-SM_MUST_CHECK enum sm_status sm_scenario_add(struct sm_scenario *sc, const struct sm_step *step);
+SM_MUST_CHECK enum sm_status sm_scenario_add(struct sm_scenario *sc,
+                                             const struct sm_sim_step *step);
 
 /* What is "hundreds of mV" in the signal's unit: how wide an open input wanders unless told. */
 double sm_scenario_wide(const struct sm_scenario *sc);

@@ -1,23 +1,23 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* scenario_read.c: a scenario's text to struct sm_scenario (the statements are told in scenario.h).
  */
-#include "scenario_parts.h"
+#include "sim/scenario_parts.h"
 
 #include <string.h>
 
-typedef bool setting(struct sm_words *w, struct sm_scenario *sc);
+typedef bool setting(struct sm_sim_words *w, struct sm_scenario *sc);
 
-static bool set_seed(struct sm_words *w, struct sm_scenario *sc)
+static bool set_seed(struct sm_sim_words *w, struct sm_scenario *sc)
 {
     unsigned seed = 0;
 
-    if (!sm_words_count(w, "the seed", 0, 4000000000U, &seed))
+    if (!sm_sim_words_count(w, "the seed", 0, 4000000000U, &seed))
         return false;
     sc->seed = seed;
     return true;
 }
 
-static bool set_signal(struct sm_words *w, struct sm_scenario *sc)
+static bool set_signal(struct sm_sim_words *w, struct sm_scenario *sc)
 {
     enum sm_unit unit;
 
@@ -26,159 +26,162 @@ static bool set_signal(struct sm_words *w, struct sm_scenario *sc)
         w->at++;
         return true;
     }
-    return sm_words_expected(w, "the unit that the meter shows");
+    return sm_sim_words_expected(w, "the unit that the meter shows");
 }
 
-static bool set_rate(struct sm_words *w, struct sm_scenario *sc)
+static bool set_rate(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_words_per_s(w, "readings", &sc->rate_per_s);
+    return sm_sim_words_per_s(w, "readings", &sc->rate_per_s);
 }
 
-static bool set_jitter(struct sm_words *w, struct sm_scenario *sc)
+static bool set_jitter(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_words_time(w, "the jitter", 0, 10, &sc->jitter_s);
+    return sm_sim_words_time(w, "the jitter", 0, 10, &sc->jitter_s);
 }
 
-static bool set_dropout(struct sm_words *w, struct sm_scenario *sc)
+static bool set_dropout(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_words_percent(w, "readings that never come", 0, 1, &sc->dropout);
+    return sm_sim_words_percent(w, "readings that never come", 0, 1, &sc->dropout);
 }
 
-static bool set_noise(struct sm_words *w, struct sm_scenario *sc)
+static bool set_noise(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_read_noise(w, sc, &sc->noise);
+    return sm_sim_read_noise(w, sc, &sc->noise);
 }
 
-static bool set_display_step(struct sm_words *w, struct sm_scenario *sc)
+static bool set_display_step(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    if (!sm_read_signal(w, "the display step", sc, &sc->display_step))
+    if (!sm_sim_read_signal(w, "the display step", sc, &sc->display_step))
         return false;
     if (sc->display_step >= 0)
         return true;
     w->at -= 2;
-    return sm_words_expected(w, "a display step that is not negative");
+    return sm_sim_words_expected(w, "a display step that is not negative");
 }
 
-static bool set_response(struct sm_words *w, struct sm_scenario *sc)
+static bool set_response(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_read_response(w, sc, &sc->response);
+    return sm_sim_read_response(w, sc, &sc->response);
 }
 
-static bool set_drift(struct sm_words *w, struct sm_scenario *sc)
+static bool set_drift(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_read_drift(w, sc, &sc->drift_per_s);
+    return sm_sim_read_drift(w, sc, &sc->drift_per_s);
 }
 
-static bool set_temperature(struct sm_words *w, struct sm_scenario *sc)
+static bool set_temperature(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_words_in_unit(w, "the temperature", SM_UNIT_CELSIUS, &sc->celsius);
+    return sm_sim_words_in_unit(w, "the temperature", SM_UNIT_CELSIUS, &sc->celsius);
 }
 
-static bool set_probe_response(struct sm_words *w, struct sm_scenario *sc)
+static bool set_probe_response(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_words_time(w, "the response of the temperature", 1e-6, 3600, &sc->probe_response_s);
+    return sm_sim_words_time(w, "the response of the temperature", 1e-6, 3600,
+                             &sc->probe_response_s);
 }
 
-static bool set_electrode(struct sm_words *w, struct sm_scenario *sc)
+static bool set_electrode(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    struct sm_electrode e = { SM_ELECTRODE_NONE, 0, 0 };
+    struct sm_sim_electrode e = { SM_SIM_ELECTRODE_NONE, 0, 0 };
 
-    if (sm_words_is(w, "line")) {
-        e.kind = SM_ELECTRODE_LINE;
-        if (sm_words_need(w, "slope") && sm_words_number(w, "slope", -1e6, 1e6, &e.slope) &&
-            sm_words_need(w, "offset"))
-            sm_words_number(w, "offset", -1e6, 1e6, &e.offset);
+    if (sm_sim_words_is(w, "line")) {
+        e.kind = SM_SIM_ELECTRODE_LINE;
+        if (sm_sim_words_need(w, "slope") && sm_sim_words_number(w, "slope", -1e6, 1e6, &e.slope) &&
+            sm_sim_words_need(w, "offset"))
+            sm_sim_words_number(w, "offset", -1e6, 1e6, &e.offset);
     } else {
-        if (sm_words_is(w, "pH"))
-            e.kind = SM_ELECTRODE_PH;
-        else if (sm_words_need(w, "log"))
-            e.kind = SM_ELECTRODE_LOG;
+        if (sm_sim_words_is(w, "pH"))
+            e.kind = SM_SIM_ELECTRODE_PH;
+        else if (sm_sim_words_need(w, "log"))
+            e.kind = SM_SIM_ELECTRODE_LOG;
         if (sc->signal != SM_UNIT_MV)
-            return sm_words_expected(w, "an electrode only with a signal in mV");
-        if (sm_words_need(w, "slope") && sm_words_percent(w, "slope", -2, 2, &e.slope) &&
-            sm_words_need(w, "offset"))
-            sm_read_signal(w, "offset", sc, &e.offset);
+            return sm_sim_words_expected(w, "an electrode only with a signal in mV");
+        if (sm_sim_words_need(w, "slope") && sm_sim_words_percent(w, "slope", -2, 2, &e.slope) &&
+            sm_sim_words_need(w, "offset"))
+            sm_sim_read_signal(w, "offset", sc, &e.offset);
     }
     sc->electrode = e;
     return !w->wrong;
 }
 
-static bool set_open(struct sm_words *w, struct sm_scenario *sc)
+static bool set_open(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_read_open(w, sc, &sc->open);
+    return sm_sim_read_open(w, sc, &sc->open);
 }
 
-static bool set_rinse_water(struct sm_words *w, struct sm_scenario *sc)
+static bool set_rinse_water(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_read_solution(w, "the rinse water's value", sc, &sc->rinse_value, &sc->rinse_unit);
+    return sm_sim_read_solution(w, "the rinse water's value", sc, &sc->rinse_value,
+                                &sc->rinse_unit);
 }
 
-static bool set_start(struct sm_words *w, struct sm_scenario *sc)
+static bool set_start(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_read_solution(w, "where the electrode stood", sc, &sc->start_value, &sc->start_unit);
+    return sm_sim_read_solution(w, "where the electrode stood", sc, &sc->start_value,
+                                &sc->start_unit);
 }
 
-static bool set_tolerance(struct sm_words *w, struct sm_scenario *sc)
+static bool set_tolerance(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    if (!sm_read_signal(w, "the tolerance", sc, &sc->tolerance))
+    if (!sm_sim_read_signal(w, "the tolerance", sc, &sc->tolerance))
         return false;
     if (sc->tolerance > 0)
         return true;
     w->at -= 2;
-    return sm_words_expected(w, "a tolerance over 0");
+    return sm_sim_words_expected(w, "a tolerance over 0");
 }
 
-static bool set_dwell(struct sm_words *w, struct sm_scenario *sc)
+static bool set_dwell(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_words_time(w, "the dwell", 0, 3600, &sc->dwell_s);
+    return sm_sim_words_time(w, "the dwell", 0, 3600, &sc->dwell_s);
 }
 
-static bool set_shape(struct sm_words *w, struct sm_scenario *sc)
+static bool set_shape(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    struct sm_shape_text t;
+    struct sm_sim_shape_text t;
 
-    if (!sm_words_text(w, "a shape's name, or a quoted line", false, &t))
+    if (!sm_sim_words_text(w, "a shape's name, or a quoted line", false, &t))
         return false;
     if (!w->word[w->at - 1].quoted) {
-        if (sm_shape_known(t.bytes, &sc->shape))
+        if (sm_sim_shape_known(t.bytes, &sc->shape))
             return true;
         w->at--;
-        return sm_words_expected(
+        return sm_sim_words_expected(
             w, "plain-mv, r-mv, semi-comma, star-sum, pause-hex, scpi-volt or a quoted line");
     }
-    const char *wrong = sm_shape_wrong(&t);
+    const char *wrong = sm_sim_shape_wrong(&t);
     if (wrong) {
         w->at--;
-        return sm_words_expected(w, wrong);
+        return sm_sim_words_expected(w, wrong);
     }
-    sc->shape = (struct sm_shape){ .line = t };
+    sc->shape = (struct sm_sim_shape){ .line = t };
     return true;
 }
 
-static bool set_status(struct sm_words *w, struct sm_scenario *sc)
+static bool set_status(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_words_text(w, "the status word when all is well", false, &sc->shape.ok);
+    return sm_sim_words_text(w, "the status word when all is well", false, &sc->shape.ok);
 }
 
-static bool set_ask(struct sm_words *w, struct sm_scenario *sc)
+static bool set_ask(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_words_text(w, "the question in quotes", true, &sc->shape.ask);
+    return sm_sim_words_text(w, "the question in quotes", true, &sc->shape.ask);
 }
 
-static bool set_identity(struct sm_words *w, struct sm_scenario *sc)
+static bool set_identity(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_words_text(w, "the question in quotes", true, &sc->shape.identity) &&
-           sm_words_text(w, "the answer in quotes", true, &sc->shape.identity_answer);
+    return sm_sim_words_text(w, "the question in quotes", true, &sc->shape.identity) &&
+           sm_sim_words_text(w, "the answer in quotes", true, &sc->shape.identity_answer);
 }
 
-static bool set_answer(struct sm_words *w, struct sm_scenario *sc)
+static bool set_answer(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_words_time(w, "the time to an answer", 0, 60, &sc->answer_s);
+    return sm_sim_words_time(w, "the time to an answer", 0, 60, &sc->answer_s);
 }
 
-static bool set_split(struct sm_words *w, struct sm_scenario *sc)
+static bool set_split(struct sm_sim_words *w, struct sm_scenario *sc)
 {
-    return sm_words_count(w, "bytes in a piece", 1, SM_SHAPE_LINE, &sc->split);
+    return sm_sim_words_count(w, "bytes in a piece", 1, SM_SIM_SHAPE_LINE, &sc->split);
 }
 
 static const struct {
@@ -235,19 +238,19 @@ static bool any_seen_but_seed(const struct reading *r)
 }
 
 /* Once, before the steps, and before what is read by its light. */
-static bool setting_in_place(struct sm_words *w, struct reading *r, size_t i)
+static bool setting_in_place(struct sm_sim_words *w, struct reading *r, size_t i)
 {
     const char *name = settings[i].name;
 
     w->at = 0;
     if (r->seen[i])
-        return sm_words_expected(w, "each setting once");
+        return sm_sim_words_expected(w, "each setting once");
     if (r->sc->n_steps > 0)
-        return sm_words_expected(w, "a step: settings come before the first step");
+        return sm_sim_words_expected(w, "a step: settings come before the first step");
     if (strcmp(name, "signal") == 0 && any_seen_but_seed(r))
-        return sm_words_expected(w, "the signal's unit before all settings but the seed");
+        return sm_sim_words_expected(w, "the signal's unit before all settings but the seed");
     if (strcmp(name, "shape") == 0 && (seen(r, "ask") || seen(r, "identity") || seen(r, "status")))
-        return sm_words_expected(w, "the shape before status, ask and identity");
+        return sm_sim_words_expected(w, "the shape before status, ask and identity");
     r->seen[i] = true;
     w->at = 1;
     return true;
@@ -259,12 +262,12 @@ static void defaults_complete(struct reading *r)
     struct sm_scenario *sc = r->sc;
 
     if (!seen(r, "rinse-water")) {
-        sc->rinse_value = sc->electrode.kind == SM_ELECTRODE_PH    ? 6.5
-                          : sc->electrode.kind == SM_ELECTRODE_LOG ? 0.01
-                                                                   : 0;
-        sc->rinse_unit = sc->electrode.kind == SM_ELECTRODE_PH    ? SM_UNIT_PH
-                         : sc->electrode.kind == SM_ELECTRODE_LOG ? SM_UNIT_MG_L
-                                                                  : sc->signal;
+        sc->rinse_value = sc->electrode.kind == SM_SIM_ELECTRODE_PH    ? 6.5
+                          : sc->electrode.kind == SM_SIM_ELECTRODE_LOG ? 0.01
+                                                                       : 0;
+        sc->rinse_unit = sc->electrode.kind == SM_SIM_ELECTRODE_PH    ? SM_UNIT_PH
+                         : sc->electrode.kind == SM_SIM_ELECTRODE_LOG ? SM_UNIT_MG_L
+                                                                      : sc->signal;
     }
     if (!seen(r, "open"))
         sc->open.level = sm_scenario_wide(sc);
@@ -274,10 +277,10 @@ static void defaults_complete(struct reading *r)
     }
 }
 
-static void step_line(struct sm_words *w, struct reading *r, enum sm_step_kind kind)
+static void step_line(struct sm_sim_words *w, struct reading *r, enum sm_sim_step_kind kind)
 {
     struct sm_scenario *sc = r->sc;
-    struct sm_step step;
+    struct sm_sim_step step;
 
     if (sc->n_steps == 0)
         defaults_complete(r);
@@ -287,40 +290,41 @@ static void step_line(struct sm_words *w, struct reading *r, enum sm_step_kind k
     step.open = sc->open;
     step.value = sc->rinse_value;
     step.unit = sc->rinse_unit;
-    if (kind == SM_STEP_BACK && !r->any_item) {
+    if (kind == SM_SIM_STEP_BACK && !r->any_item) {
         w->at = 0;
-        sm_words_expected(w, "an \"in\" before the first \"back\"");
+        sm_sim_words_expected(w, "an \"in\" before the first \"back\"");
         return;
     }
-    if (!sm_read_step(w, sc, &step) || !sm_words_end(w))
+    if (!sm_sim_read_step(w, sc, &step) || !sm_sim_words_end(w))
         return;
-    r->any_item = r->any_item || kind == SM_STEP_IN;
+    r->any_item = r->any_item || kind == SM_SIM_STEP_IN;
     if (sm_scenario_add(sc, &step) != SM_OK) {
         w->at = 0;
-        sm_words_expected(w, "fewer steps, or more memory");
+        sm_sim_words_expected(w, "fewer steps, or more memory");
     }
 }
 
-static void line_read(struct sm_words *w, struct reading *r)
+static void line_read(struct sm_sim_words *w, struct reading *r)
 {
     /* drift, noise and response are settings before the first step and steps after it */
-    for (unsigned k = 0; k < SM_STEP_KINDS; k++) {
-        const bool both = k == SM_STEP_DRIFT || k == SM_STEP_NOISE || k == SM_STEP_RESPONSE;
+    for (unsigned k = 0; k < SM_SIM_STEP_KINDS; k++) {
+        const bool both =
+            k == SM_SIM_STEP_DRIFT || k == SM_SIM_STEP_NOISE || k == SM_SIM_STEP_RESPONSE;
         if (both && r->sc->n_steps == 0)
             continue;
-        if (sm_words_is(w, sm_step_name((enum sm_step_kind)k))) {
-            step_line(w, r, (enum sm_step_kind)k);
+        if (sm_sim_words_is(w, sm_sim_step_name((enum sm_sim_step_kind)k))) {
+            step_line(w, r, (enum sm_sim_step_kind)k);
             return;
         }
     }
     for (size_t i = 0; i < SETTINGS; i++) {
-        if (sm_words_is(w, settings[i].name)) {
+        if (sm_sim_words_is(w, settings[i].name)) {
             if (setting_in_place(w, r, i) && settings[i].read(w, r->sc))
-                sm_words_end(w);
+                sm_sim_words_end(w);
             return;
         }
     }
-    sm_words_expected(w, "a setting or a step");
+    sm_sim_words_expected(w, "a setting or a step");
 }
 
 enum sm_status sm_scenario_read(struct sm_scenario *sc, const char *file, const char *text,
@@ -338,11 +342,11 @@ enum sm_status sm_scenario_read(struct sm_scenario *sc, const char *file, const 
         const char *end = memchr(text + at, '\n', n - at);
         size_t length = end ? (size_t)(end - text) - at : n - at;
         const size_t next = at + length + 1;
-        struct sm_words w;
+        struct sm_sim_words w;
         if (length > 0 && text[at + length - 1] == '\r')
             length--;
-        sm_words_init(&w, file, ++line, text + at, length, b);
-        if (sm_words_left(&w))
+        sm_sim_words_init(&w, file, ++line, text + at, length, b);
+        if (sm_sim_words_left(&w))
             line_read(&w, &r);
         at = next;
     }

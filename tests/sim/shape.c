@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* shape.c: see shape.h. */
-#include "shape.h"
+#include "sim/shape.h"
 
 #include <math.h>
 #include <stdio.h>
@@ -20,19 +20,19 @@ static const struct {
     { "scpi-volt", "%k.8e\n", "", "MEAS:VOLT:DC?\n", "*IDN?\n", "INVENTED,VOLTMETER,0007,1.0\n" },
 };
 
-static struct sm_shape_text text_of(const char *s)
+static struct sm_sim_shape_text text_of(const char *s)
 {
-    struct sm_shape_text t = { "", strlen(s) };
+    struct sm_sim_shape_text t = { "", strlen(s) };
 
     memcpy(t.bytes, s, t.n + 1);
     return t;
 }
 
-bool sm_shape_known(const char *name, struct sm_shape *ret_shape)
+bool sm_sim_shape_known(const char *name, struct sm_sim_shape *ret_shape)
 {
     for (size_t i = 0; i < sizeof known / sizeof known[0]; i++) {
         if (strcmp(name, known[i].name) == 0) {
-            *ret_shape = (struct sm_shape){
+            *ret_shape = (struct sm_sim_shape){
                 .line = text_of(known[i].line),
                 .ok = text_of(known[i].ok),
                 .ask = text_of(known[i].ask),
@@ -52,7 +52,7 @@ struct directive {
 };
 
 /* Reads the directive behind the '%' at line->bytes[at]; returns where it ends. */
-static size_t directive_read(const struct sm_shape_text *line, size_t at, struct directive *ret)
+static size_t directive_read(const struct sm_sim_shape_text *line, size_t at, struct directive *ret)
 {
     struct directive d = { 0 };
     const char *s = line->bytes;
@@ -79,7 +79,7 @@ static bool is_value(const struct directive *d)
     return d->letter == 'v' || d->letter == 'a' || d->letter == 'e' || d->letter == 'm';
 }
 
-const char *sm_shape_wrong(const struct sm_shape_text *line)
+const char *sm_sim_shape_wrong(const struct sm_sim_shape_text *line)
 {
     bool value = false;
     int directives = 0;
@@ -107,7 +107,7 @@ const char *sm_shape_wrong(const struct sm_shape_text *line)
     return value ? NULL : "the line shows no value (%v, %a, %e or %m)";
 }
 
-int sm_shape_decimals(const struct sm_shape_text *line)
+int sm_sim_shape_decimals(const struct sm_sim_shape_text *line)
 {
     for (size_t at = 0; at < line->n;) {
         struct directive d = { 0 };
@@ -130,7 +130,7 @@ struct out {
 
 static void put(struct out *o, const char *s, size_t n)
 {
-    for (size_t i = 0; i < n && o->n < SM_SHAPE_LINE - 1; i++)
+    for (size_t i = 0; i < n && o->n < SM_SIM_SHAPE_LINE - 1; i++)
         o->buf[o->n++] = s[i];
     o->buf[o->n] = '\0';
 }
@@ -198,7 +198,7 @@ static void put_checksum(struct out *o, const struct directive *d)
     put(o, s, strlen(s));
 }
 
-static void put_sign(struct out *o, const struct directive *d, const struct sm_shown *shown)
+static void put_sign(struct out *o, const struct directive *d, const struct sm_sim_shown *shown)
 {
     const bool minus = signbit(shown->value);
 
@@ -220,8 +220,9 @@ static void put_running(struct out *o, const struct directive *d, unsigned long 
 }
 
 /* in_place: a word takes the value's place. */
-static void put_directive(struct out *o, const struct directive *d, const struct sm_shape *shape,
-                          const struct sm_shown *shown, bool in_place)
+static void put_directive(struct out *o, const struct directive *d,
+                          const struct sm_sim_shape *shape, const struct sm_sim_shown *shown,
+                          bool in_place)
 {
     switch (d->letter) {
     case 's':
@@ -253,7 +254,7 @@ static void put_directive(struct out *o, const struct directive *d, const struct
     }
 }
 
-static bool has_status(const struct sm_shape_text *line)
+static bool has_status(const struct sm_sim_shape_text *line)
 {
     for (size_t at = 0; at < line->n;) {
         struct directive d = { 0 };
@@ -267,10 +268,10 @@ static bool has_status(const struct sm_shape_text *line)
     return false;
 }
 
-size_t sm_shape_write(const struct sm_shape *shape, const struct sm_shown *shown,
-                      char out[SM_SHAPE_LINE])
+size_t sm_sim_shape_write(const struct sm_sim_shape *shape, const struct sm_sim_shown *shown,
+                          char out[SM_SIM_SHAPE_LINE])
 {
-    const struct sm_shape_text *line = &shape->line;
+    const struct sm_sim_shape_text *line = &shape->line;
     const bool in_place = !has_status(line);
     struct out o = { out, 0 };
 

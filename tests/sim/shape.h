@@ -16,22 +16,23 @@
 #include <stdbool.h>
 #include <stddef.h>
 
-#define SM_SHAPE_TEXT 160 /* bytes of a template or question, and its NUL */
-#define SM_SHAPE_LINE 512 /* bytes that hold any line a shape writes */
+#define SM_SIM_SHAPE_TEXT 160 /* bytes of a template or question, and its NUL */
+#define SM_SIM_SHAPE_LINE 512 /* bytes that hold any line a shape writes */
 
-struct sm_shape_text {
-    char bytes[SM_SHAPE_TEXT]; /* any bytes; NUL-terminated too */
+struct sm_sim_shape_text {
+    char bytes[SM_SIM_SHAPE_TEXT]; /* any bytes; NUL-terminated too */
     size_t n;
 };
 
-struct sm_shape {
-    struct sm_shape_text line; /* template */
-    struct sm_shape_text ok;   /* the status word when all is well */
-    struct sm_shape_text ask;  /* what a reading is asked with; n == 0: the meter sends by itself */
-    struct sm_shape_text identity, identity_answer; /* n == 0: none */
+struct sm_sim_shape {
+    struct sm_sim_shape_text line; /* template */
+    struct sm_sim_shape_text ok;   /* the status word when all is well */
+    struct sm_sim_shape_text
+        ask; /* what a reading is asked with; n == 0: the meter sends by itself */
+    struct sm_sim_shape_text identity, identity_answer; /* n == 0: none */
 };
 
-struct sm_shown { /* what the display shows */
+struct sm_sim_shown { /* what the display shows */
     double value;
     const char *word; /* in place of the value; NULL: none */
     double celsius;
@@ -39,15 +40,15 @@ struct sm_shown { /* what the display shows */
 };
 
 /* One of the shapes known by name (as in conf/profiles); false: no such name. */
-bool sm_shape_known(const char *name, struct sm_shape *ret_shape);
+bool sm_sim_shape_known(const char *name, struct sm_sim_shape *ret_shape);
 
 /* NULL where the template can be used, else what is wrong with it. */
-const char *sm_shape_wrong(const struct sm_shape_text *line);
+const char *sm_sim_shape_wrong(const struct sm_sim_shape_text *line);
 
 /* The decimals of the first value that the template shows; -1: it has an exponent. */
-int sm_shape_decimals(const struct sm_shape_text *line);
+int sm_sim_shape_decimals(const struct sm_sim_shape_text *line);
 
-/* Writes a line by a template that sm_shape_wrong has passed; returns its length. */
-size_t sm_shape_write(const struct sm_shape *shape, const struct sm_shown *shown,
-                      char out[SM_SHAPE_LINE]);
+/* Writes a line by a template that sm_sim_shape_wrong has passed; returns its length. */
+size_t sm_sim_shape_write(const struct sm_sim_shape *shape, const struct sm_sim_shown *shown,
+                          char out[SM_SIM_SHAPE_LINE]);
 #endif

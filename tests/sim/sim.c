@@ -1,7 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* sim.c: see sim.h. At any moment one of a few things is due first: a piece of a line under way,
  * the next step of the scenario, the link's return, a reading, an answer. */
-#include "sim.h"
+#include "sim/sim.h"
 
 #include <math.h>
 #include <stdio.h>
@@ -9,7 +9,7 @@
 #include <string.h>
 
 #include "base/time.h"
-#include "prng.h"
+#include "sim/prng.h"
 
 #define HEARD_MAX 512
 static const double wander_s = 1;              /* memory of an open input */
@@ -21,19 +21,19 @@ enum answer { ANSWER_NONE, ANSWER_READING, ANSWER_IDENTITY };
 
 struct sm_sim {
     const struct sm_scenario *sc;
-    struct sm_prng noise, air, clock, bytes, stray;
-    struct sm_probe probe;
+    struct sm_sim_prng noise, air, clock, bytes, stray;
+    struct sm_sim_probe probe;
     int64_t now_t_ns;
     size_t next_step;       /* the first not begun */
     int64_t next_step_t_ns; /* when it begins, or the end of the session */
     bool ended;
 
     double noise_now, telegraph; /* AR memory; side of the telegraph */
-    struct sm_noise noise_how;
+    struct sm_sim_noise noise_how;
     bool in_air;
-    struct sm_open open; /* how it is shown in air */
-    double wander;       /* the open input less the probe, */
-    int64_t wander_t_ns; /* as it was then */
+    struct sm_sim_open open; /* how it is shown in air */
+    double wander;           /* the open input less the probe, */
+    int64_t wander_t_ns;     /* as it was then */
     double bubble;
     int64_t bubble_to_t_ns, word_to_t_ns, silent_to_t_ns;
     char word[SM_SCENARIO_WORD];
@@ -51,16 +51,16 @@ struct sm_sim {
     char heard[HEARD_MAX];
     size_t n_heard;
 
-    char out[SM_SHAPE_LINE]; /* the line under way */
+    char out[SM_SIM_SHAPE_LINE]; /* the line under way */
     size_t out_n, out_at;
     int64_t out_t_ns;
     bool out_is_reading;
     unsigned rubbish_left;
     bool rubbish_printable;
-    const struct sm_step *saying; /* a SAY step under way */
+    const struct sm_sim_step *saying; /* a SAY step under way */
     unsigned say_left;
     size_t said;
-    char shown_text[SM_SHAPE_LINE];
+    char shown_text[SM_SIM_SHAPE_LINE];
     bool shown_word, shown_complete;
 };
 
@@ -74,7 +74,7 @@ static void schedule_reading(struct sm_sim *s)
 {
     const struct sm_scenario *sc = s->sc;
     const double even_s = (double)s->n_read / sc->rate_per_s;
-    const double off_s = sc->jitter_s * (2 * sm_prng_uniform(&s->clock) - 1);
+    const double off_s = sc->jitter_s * (2 * sm_sim_prng_uniform(&s->clock) - 1);
     const int64_t t_ns = ns(even_s + off_s);
 
     s->n_read++;
@@ -88,14 +88,14 @@ enum sm_status sm_sim_create(const struct sm_scenario *sc, struct sm_sim **ret_s
     if (!s)
         return SM_ENOMEM;
     s->sc = sc;
-    sm_prng_init(&s->noise, sc->seed, 1);
-    sm_prng_init(&s->air, sc->seed, 2);
-    sm_prng_init(&s->clock, sc->seed, 3);
-    sm_prng_init(&s->bytes, sc->seed, 4);
-    sm_prng_init(&s->stray, sc->seed, 5);
-    sm_probe_start(&s->probe, sc);
+    sm_sim_prng_init(&s->noise, sc->seed, 1);
+    sm_sim_prng_init(&s->air, sc->seed, 2);
+    sm_sim_prng_init(&s->clock, sc->seed, 3);
+    sm_sim_prng_init(&s->bytes, sc->seed, 4);
+    sm_sim_prng_init(&s->stray, sc->seed, 5);
+    sm_sim_probe_start(&s->probe, sc);
     s->noise_how = sc->noise;
-    s->noise_now = sm_prng_normal(&s->noise);
+    s->noise_now = sm_sim_prng_normal(&s->noise);
     s->telegraph = 1;
     s->read_t_ns = -1;
     schedule_reading(s);
@@ -110,7 +110,7 @@ void sm_sim_destroy(struct sm_sim *s)
     free(s);
 }
 
-const struct sm_step *sm_sim_step(const struct sm_sim *s)
+const struct sm_sim_step *sm_sim_step_now(const struct sm_sim *s)
 {
     return s->next_step == 0 ? NULL : &s->sc->step[s->next_step - 1];
 }
@@ -146,23 +146,23 @@ int64_t sm_sim_due(const struct sm_sim *s)
 
 static double noise(struct sm_sim *s, double t_s)
 {
-    const struct sm_noise *n = &s->noise_how;
+    const struct sm_sim_noise *n = &s->noise_how;
 
     switch (n->kind) {
-    case SM_NOISE_AR:
+    case SM_SIM_NOISE_AR:
         s->noise_now =
-            n->how * s->noise_now + sqrt(1 - n->how * n->how) * sm_prng_normal(&s->noise);
+            n->how * s->noise_now + sqrt(1 - n->how * n->how) * sm_sim_prng_normal(&s->noise);
         return n->sd * s->noise_now;
-    case SM_NOISE_HUM:
+    case SM_SIM_NOISE_HUM:
         return n->sd * sqrt(2.0) * sin(6.283185307179586 * fmod(n->how * t_s, 1.0));
-    case SM_NOISE_TELEGRAPH:
-        if (sm_prng_chance(&s->noise, n->how))
+    case SM_SIM_NOISE_TELEGRAPH:
+        if (sm_sim_prng_chance(&s->noise, n->how))
             s->telegraph = -s->telegraph;
         return n->sd * s->telegraph;
-    case SM_NOISE_WHITE:
+    case SM_SIM_NOISE_WHITE:
         break;
     }
-    return n->sd * sm_prng_normal(&s->noise);
+    return n->sd * sm_sim_prng_normal(&s->noise);
 }
 
 /* The open input: a random walk held together over about wander_s, hundreds of mV wide. */
@@ -170,33 +170,34 @@ static double wander(struct sm_sim *s, int64_t t_ns)
 {
     const double keep = exp(-1e-9 * (double)(t_ns - s->wander_t_ns) / wander_s);
 
-    s->wander = keep * s->wander + sqrt(1 - keep * keep) * s->open.level * sm_prng_normal(&s->air);
+    s->wander =
+        keep * s->wander + sqrt(1 - keep * keep) * s->open.level * sm_sim_prng_normal(&s->air);
     s->wander_t_ns = t_ns;
     return s->wander;
 }
 
 static double stray(struct sm_sim *s)
 {
-    const double by = sm_prng_log_between(&s->stray, 3, 100) * sm_scenario_wide(s->sc) / 300;
+    const double by = sm_sim_prng_log_between(&s->stray, 3, 100) * sm_scenario_wide(s->sc) / 300;
 
     s->stray_left--;
     if (s->stray_by > 0 || s->stray_by < 0)
         return s->stray_by;
-    return sm_prng_chance(&s->stray, 0.5) ? by : -by;
+    return sm_sim_prng_chance(&s->stray, 0.5) ? by : -by;
 }
 
 /* What the display shows at t. */
-static void show(struct sm_sim *s, int64_t t_ns, struct sm_shown *ret)
+static void show(struct sm_sim *s, int64_t t_ns, struct sm_sim_shown *ret)
 {
     const double step = s->sc->display_step;
-    const char *word = s->in_air && s->open.kind == SM_OPEN_WORD ? s->open.word : NULL;
-    double v = sm_probe_signal(&s->probe, t_ns) + noise(s, 1e-9 * (double)t_ns);
+    const char *word = s->in_air && s->open.kind == SM_SIM_OPEN_WORD ? s->open.word : NULL;
+    double v = sm_sim_probe_signal(&s->probe, t_ns) + noise(s, 1e-9 * (double)t_ns);
 
     if (t_ns < s->word_to_t_ns)
         word = s->word;
-    if (s->in_air && s->open.kind == SM_OPEN_WANDER)
+    if (s->in_air && s->open.kind == SM_SIM_OPEN_WANDER)
         v += wander(s, t_ns);
-    else if (s->in_air && s->open.kind == SM_OPEN_RAIL)
+    else if (s->in_air && s->open.kind == SM_SIM_OPEN_RAIL)
         v = s->open.level;
     else if (t_ns < s->bubble_to_t_ns)
         v += s->bubble;
@@ -204,17 +205,17 @@ static void show(struct sm_sim *s, int64_t t_ns, struct sm_shown *ret)
         v += stray(s);
     if (step > 0)
         v = step * round(v / step);
-    *ret = (struct sm_shown){ v, word, sm_probe_celsius(&s->probe, t_ns), ++s->number };
+    *ret = (struct sm_sim_shown){ v, word, sm_sim_probe_celsius(&s->probe, t_ns), ++s->number };
 }
 
 /* Puts a line on the wire; its value as text is kept for sm_sim_reading. */
 static void line_begin(struct sm_sim *s, int64_t t_ns)
 {
-    const int decimals = sm_shape_decimals(&s->sc->shape.line);
-    struct sm_shown shown;
+    const int decimals = sm_sim_shape_decimals(&s->sc->shape.line);
+    struct sm_sim_shown shown;
 
     show(s, t_ns, &shown);
-    s->out_n = sm_shape_write(&s->sc->shape, &shown, s->out);
+    s->out_n = sm_sim_shape_write(&s->sc->shape, &shown, s->out);
     s->out_at = 0;
     s->out_t_ns = t_ns;
     s->out_is_reading = true;
@@ -250,8 +251,8 @@ static size_t rubbish_piece(struct sm_sim *s, char *buf, size_t cap)
     if (n > cap)
         n = cap;
     for (size_t i = 0; i < n; i++)
-        buf[i] = (char)(s->rubbish_printable ? ' ' + (int)sm_prng_below(&s->bytes, 95)
-                                             : (int)sm_prng_below(&s->bytes, 256) - 128);
+        buf[i] = (char)(s->rubbish_printable ? ' ' + (int)sm_sim_prng_below(&s->bytes, 95)
+                                             : (int)sm_sim_prng_below(&s->bytes, 256) - 128);
     s->rubbish_left -= (unsigned)n;
     s->out_t_ns = s->now_t_ns + ns((double)n * fast_byte_s);
     return n;
@@ -259,7 +260,7 @@ static size_t rubbish_piece(struct sm_sim *s, char *buf, size_t cap)
 
 static size_t say_piece(struct sm_sim *s, char *buf, size_t cap)
 {
-    const struct sm_shape_text *text = &s->saying->text;
+    const struct sm_sim_shape_text *text = &s->saying->text;
     size_t n = text->n - s->said;
 
     if (n > cap)
@@ -282,53 +283,53 @@ static void wire_clear(struct sm_sim *s)
     s->n_heard = 0;
 }
 
-/* What a step does to the meter and its wire (sm_probe_step: what it does to the electrode). */
-static void step_on_wire(struct sm_sim *s, const struct sm_step *step, int64_t t_ns)
+/* What a step does to the meter and its wire (sm_sim_probe_step: what it does to the electrode). */
+static void step_on_wire(struct sm_sim *s, const struct sm_sim_step *step, int64_t t_ns)
 {
-    const int64_t end_t_ns = t_ns + sm_step_span_ns(step);
+    const int64_t end_t_ns = t_ns + sm_sim_step_span_ns(step);
 
     switch (step->kind) {
-    case SM_STEP_BUBBLE:
+    case SM_SIM_STEP_BUBBLE:
         s->bubble = step->amount;
         s->bubble_to_t_ns = end_t_ns;
         break;
-    case SM_STEP_STRAY:
+    case SM_SIM_STEP_STRAY:
         s->stray_left = step->count;
         s->stray_by = step->amount;
         break;
-    case SM_STEP_SILENCE:
+    case SM_SIM_STEP_SILENCE:
         wire_clear(s);
         s->silent_to_t_ns = end_t_ns;
         break;
-    case SM_STEP_UNPLUG:
+    case SM_SIM_STEP_UNPLUG:
         wire_clear(s);
         s->silent_to_t_ns = s->up_t_ns = end_t_ns;
         s->down = true;
         break;
-    case SM_STEP_WORD:
+    case SM_SIM_STEP_WORD:
         memcpy(s->word, step->open.word, sizeof s->word);
         s->word_to_t_ns = end_t_ns;
         break;
-    case SM_STEP_RUBBISH:
+    case SM_SIM_STEP_RUBBISH:
         s->rubbish_left = step->count;
         s->rubbish_printable = step->printable;
         s->out_t_ns = t_ns;
         break;
-    case SM_STEP_SAY:
+    case SM_SIM_STEP_SAY:
         s->saying = step;
         s->say_left = step->count;
         s->said = 0;
         s->out_t_ns = t_ns;
         break;
-    case SM_STEP_HALFLINE:
+    case SM_SIM_STEP_HALFLINE:
         line_begin(s, t_ns);
         s->out_n = (s->out_n + 1) / 2;
         s->out_is_reading = false;
         break;
-    case SM_STEP_LATE:
+    case SM_SIM_STEP_LATE:
         s->late_s = step->amount;
         break;
-    case SM_STEP_NOISE:
+    case SM_SIM_STEP_NOISE:
         s->noise_how = step->noise;
         break;
     default:
@@ -342,21 +343,21 @@ static enum sm_sim_what step_begin(struct sm_sim *s, int64_t t_ns)
         s->ended = true;
         return SM_SIM_END;
     }
-    const struct sm_step *step = &s->sc->step[s->next_step++];
-    s->next_step_t_ns = t_ns + sm_step_span_ns(step);
-    sm_probe_step(&s->probe, s->sc, step, t_ns);
-    if (step->kind == SM_STEP_AIR || step->kind == SM_STEP_LIFT) {
-        const double far = step->open.level * sm_prng_between(&s->air, 0.4, 1.6);
+    const struct sm_sim_step *step = &s->sc->step[s->next_step++];
+    s->next_step_t_ns = t_ns + sm_sim_step_span_ns(step);
+    sm_sim_probe_step(&s->probe, s->sc, step, t_ns);
+    if (step->kind == SM_SIM_STEP_AIR || step->kind == SM_SIM_STEP_LIFT) {
+        const double far = step->open.level * sm_sim_prng_between(&s->air, 0.4, 1.6);
         s->in_air = true;
         s->open = step->open;
-        s->wander = sm_prng_chance(&s->air, 0.5) ? far : -far;
+        s->wander = sm_sim_prng_chance(&s->air, 0.5) ? far : -far;
         s->wander_t_ns = t_ns;
-    } else if (step->kind == SM_STEP_IN || step->kind == SM_STEP_BACK ||
-               step->kind == SM_STEP_RINSE) {
+    } else if (step->kind == SM_SIM_STEP_IN || step->kind == SM_SIM_STEP_BACK ||
+               step->kind == SM_SIM_STEP_RINSE) {
         s->in_air = false;
     }
     step_on_wire(s, step, t_ns);
-    return step->kind == SM_STEP_UNPLUG ? SM_SIM_DOWN : SM_SIM_STEP;
+    return step->kind == SM_SIM_STEP_UNPLUG ? SM_SIM_DOWN : SM_SIM_STEP;
 }
 
 static void answer_begin(struct sm_sim *s, int64_t t_ns)
@@ -377,10 +378,10 @@ static void answer_begin(struct sm_sim *s, int64_t t_ns)
 
 static void reading_begin(struct sm_sim *s, int64_t t_ns)
 {
-    const struct sm_shape_text *ask = &s->sc->shape.ask;
+    const struct sm_sim_shape_text *ask = &s->sc->shape.ask;
 
     schedule_reading(s);
-    if (t_ns < s->silent_to_t_ns || sm_prng_chance(&s->clock, s->sc->dropout))
+    if (t_ns < s->silent_to_t_ns || sm_sim_prng_chance(&s->clock, s->sc->dropout))
         return;
     if (ask->n > 0)
         sm_sim_ask(s, t_ns, ask->bytes, ask->n);
@@ -421,7 +422,7 @@ enum sm_sim_what sm_sim_next(struct sm_sim *s, int64_t *ret_t_ns, char *buf, siz
     return SM_SIM_QUIET;
 }
 
-static bool ends_with(const char *bytes, size_t n, const struct sm_shape_text *end)
+static bool ends_with(const char *bytes, size_t n, const struct sm_sim_shape_text *end)
 {
     return end->n > 0 && n >= end->n && memcmp(bytes + n - end->n, end->bytes, end->n) == 0;
 }
@@ -453,10 +454,10 @@ void sm_sim_ask_itself(struct sm_sim *s)
     s->read_t_ns = s->sc->shape.ask.n > 0 && s->read_t_ns == SM_NEVER ? 0 : s->read_t_ns;
 }
 
-bool sm_sim_reading(struct sm_sim *s, int64_t *ret_t_ns, char ret_text[SM_SHAPE_LINE],
+bool sm_sim_reading(struct sm_sim *s, int64_t *ret_t_ns, char ret_text[SM_SIM_SHAPE_LINE],
                     bool *ret_word)
 {
-    char buf[SM_SHAPE_LINE];
+    char buf[SM_SIM_SHAPE_LINE];
     size_t n;
 
     for (;;) {

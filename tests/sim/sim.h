@@ -10,14 +10,14 @@
  * its own deadline (and so a question) comes first. */
 #ifndef SM_SIM_SIM_H
 #define SM_SIM_SIM_H
-#include "probe.h"
-#include "scenario.h"
+#include "sim/probe.h"
+#include "sim/scenario.h"
 
 enum sm_sim_what {
     SM_SIM_BYTES, /* n bytes came down the wire */
     SM_SIM_DOWN,  /* the link went */
     SM_SIM_UP,    /* and came back */
-    SM_SIM_STEP,  /* a step of the scenario begins (sm_sim_step); one that unplugs gives DOWN */
+    SM_SIM_STEP,  /* a step of the scenario begins (sm_sim_step_now); one that unplugs gives DOWN */
     SM_SIM_QUIET, /* nothing that anyone sees: a reading that never came, say */
     SM_SIM_END    /* the scenario is over */
 };
@@ -41,7 +41,7 @@ enum sm_sim_what sm_sim_next(struct sm_sim *s, int64_t *ret_t_ns, char *buf, siz
 void sm_sim_ask(struct sm_sim *s, int64_t t_ns, const char *bytes, size_t n);
 
 /* The step that began last; NULL: none yet. */
-const struct sm_step *sm_sim_step(const struct sm_sim *s);
+const struct sm_sim_step *sm_sim_step_now(const struct sm_sim *s);
 
 /* Where the meter must be asked: it is asked at the scenario's rate, so that a session can be
  * written without a driver. Before the first sm_sim_next; no effect on a meter that sends by
@@ -51,6 +51,6 @@ void sm_sim_ask_itself(struct sm_sim *s);
 /* Runs to the next reading whose line is complete, passing over everything else. False: the
  * scenario is over. ret_text  the value as the display shows it, "-12.4", or the word in its place
  *   ret_word  it is a word */
-bool sm_sim_reading(struct sm_sim *s, int64_t *ret_t_ns, char ret_text[SM_SHAPE_LINE],
+bool sm_sim_reading(struct sm_sim *s, int64_t *ret_t_ns, char ret_text[SM_SIM_SHAPE_LINE],
                     bool *ret_word);
 #endif

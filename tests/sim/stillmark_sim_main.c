@@ -8,9 +8,9 @@
 #include <string.h>
 
 #include "base/number.h"
-#include "play.h"
-#include "random_session.h"
-#include "write.h"
+#include "sim/play.h"
+#include "sim/random_session.h"
+#include "sim/write.h"
 
 #define BLAMES 20
 
@@ -42,7 +42,7 @@ struct wishes {
     const char *scenario, *csv, *lines, *truth, *events;
     bool random, has_seed;
     double beakers, seed, tolerance, dwell_s, rate_per_s; /* 0: not told */
-    struct sm_play play;
+    struct sm_sim_play play;
 };
 
 static int fail(const char *what, const char *why)
@@ -233,7 +233,7 @@ static int play(struct wishes *w, const struct sm_scenario *sc)
         events = strcmp(w->events, "-") == 0 ? stdout : fopen(w->events, "wb");
     if (w->events && !events)
         return fail(w->events, strerror(errno));
-    const enum sm_status status = sm_play(sc, &w->play, events);
+    const enum sm_status status = sm_sim_play(sc, &w->play, events);
     const int why = errno;
     if (events && events != stdout)
         fclose(events);
@@ -250,13 +250,13 @@ static int work(struct wishes *w)
     if (w->random ? make_random(w, &sc) : read_scenario(w->scenario, &sc)) {
         if (w->has_seed)
             sc.seed = (uint64_t)w->seed;
-        if (!write_file(w->truth, sm_write_truth, &sc))
+        if (!write_file(w->truth, sm_sim_write_truth, &sc))
             status = 2;
         else if (!w->csv && !w->lines)
             status = play(w, &sc);
-        else if (write_file(w->csv, sm_write_csv, &sc) &&
-                 write_file(w->lines, sm_write_lines, &sc) &&
-                 write_file(w->events, sm_write_events, &sc))
+        else if (write_file(w->csv, sm_sim_write_csv, &sc) &&
+                 write_file(w->lines, sm_sim_write_lines, &sc) &&
+                 write_file(w->events, sm_sim_write_events, &sc))
             status = 0;
     }
     sm_scenario_free(&sc);

@@ -1,9 +1,9 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* test_sim.c: the simulated meter: its electrode, its truth, its bytes and their times. */
 #include "check.h"
-#include "prng.h"
-#include "random_session.h"
-#include "sim.h"
+#include "sim/prng.h"
+#include "sim/random_session.h"
+#include "sim/sim.h"
 
 #include <inttypes.h>
 #include <math.h>
@@ -62,23 +62,23 @@ static void random_numbers_are_those_of_the_published_recipe(void **state)
      * step makes the state 7, 0, 262146, 6 << 45: second rotl(0, 7) * 9 = 0, and so on, worked by
      * hand. */
     static const uint64_t want[] = { 11520, 0, 1509978240 };
-    struct sm_prng p = { { 1, 2, 3, 4 }, false, 0 };
+    struct sm_sim_prng p = { { 1, 2, 3, 4 }, false, 0 };
 
     (void)state;
     for (size_t i = 0; i < COUNT(want); i++)
-        assert_int_equal(sm_prng_next(&p), want[i]);
+        assert_int_equal(sm_sim_prng_next(&p), want[i]);
 }
 
 static void normal_deviates_have_mean_0_and_sd_1(void **state)
 {
     const int n = 200000;
     double sum = 0, squares = 0;
-    struct sm_prng p;
+    struct sm_sim_prng p;
 
     (void)state;
-    sm_prng_init(&p, 3, 0);
+    sm_sim_prng_init(&p, 3, 0);
     for (int i = 0; i < n; i++) {
-        const double x = sm_prng_normal(&p);
+        const double x = sm_sim_prng_normal(&p);
         sum += x;
         squares += x * x;
     }
@@ -92,59 +92,59 @@ static void nernst_slope_is_the_published_one(void **state)
      * in the SI of 2019 (CODATA 2018); rounded to 0.01 mV also in the pharmacopoeia's table (USP
      * chapter 791, table 1) at 20 and 25 °C. */
     (void)state;
-    check_close("0 °C", sm_electrode_nernst_mv(0), 54.1988139071, 1e-9);
-    check_close("20 °C", sm_electrode_nernst_mv(20), 58.1672425292, 1e-9);
-    check_close("25 °C", sm_electrode_nernst_mv(25), 59.1593496848, 1e-9);
-    check_close("100 °C", sm_electrode_nernst_mv(100), 74.0409570179, 1e-9);
+    check_close("0 °C", sm_sim_electrode_nernst_mv(0), 54.1988139071, 1e-9);
+    check_close("20 °C", sm_sim_electrode_nernst_mv(20), 58.1672425292, 1e-9);
+    check_close("25 °C", sm_sim_electrode_nernst_mv(25), 59.1593496848, 1e-9);
+    check_close("100 °C", sm_sim_electrode_nernst_mv(100), 74.0409570179, 1e-9);
 }
 
 static void electrodes_turn_values_into_signals_as_worked_by_hand(void **state)
 {
-    const struct sm_electrode ph = { SM_ELECTRODE_PH, 0.986, 3.9 };
-    const struct sm_electrode fluoride = { SM_ELECTRODE_LOG, -0.979, 92.2 };
-    const struct sm_electrode photometer = { SM_ELECTRODE_LINE, 0.2105, 0.001 };
+    const struct sm_sim_electrode ph = { SM_SIM_ELECTRODE_PH, 0.986, 3.9 };
+    const struct sm_sim_electrode fluoride = { SM_SIM_ELECTRODE_LOG, -0.979, 92.2 };
+    const struct sm_sim_electrode photometer = { SM_SIM_ELECTRODE_LINE, 0.2105, 0.001 };
 
     (void)state;
-    check_close("pH 7", sm_electrode_signal(&ph, 7, 20), 3.9, 1e-12);
+    check_close("pH 7", sm_sim_electrode_signal(&ph, 7, 20), 3.9, 1e-12);
     /* 3.9 + 0.986 * 58.1672425292 * 5.32 */
-    check_close("pH 1.68", sm_electrode_signal(&ph, 1.68, 20), 309.017434, 1e-6);
-    check_close("1 mg/L", sm_electrode_signal(&fluoride, 1, 21.5), 92.2, 1e-12);
+    check_close("pH 1.68", sm_sim_electrode_signal(&ph, 1.68, 20), 309.017434, 1e-6);
+    check_close("1 mg/L", sm_sim_electrode_signal(&fluoride, 1, 21.5), 92.2, 1e-12);
     /* a decade at 25 °C: 92.2 - 0.979 * 59.1593496848 */
-    check_close("10 mg/L", sm_electrode_signal(&fluoride, 10, 25), 34.2829967, 1e-6);
-    check_close("2 mg/L", sm_electrode_signal(&photometer, 2, 20), 0.422, 1e-12);
+    check_close("10 mg/L", sm_sim_electrode_signal(&fluoride, 10, 25), 34.2829967, 1e-6);
+    check_close("2 mg/L", sm_sim_electrode_signal(&photometer, 2, 20), 0.422, 1e-12);
 }
 
 static void responses_pass_through_points_worked_by_hand(void **state)
 {
     static const struct {
         const char *what;
-        struct sm_response r;
+        struct sm_sim_response r;
         double step, t_s, want, tolerance, settle_s;
     } cases[] = {
         /* 100/e; 100 exp(-t/10) = 1 at 10 ln 100 */
         { "exponential",
-          { SM_RESPONSE_EXPONENTIAL, 10, 0, 0 },
+          { SM_SIM_RESPONSE_EXPONENTIAL, 10, 0, 0 },
           100,
           10,
           36.78794412,
           1,
           46.05170186 },
         { "exponential, falling",
-          { SM_RESPONSE_EXPONENTIAL, 10, 0, 0 },
+          { SM_SIM_RESPONSE_EXPONENTIAL, 10, 0, 0 },
           -100,
           10,
           -36.78794412,
           1,
           46.05170186 },
         /* half at t = a; 1/(1 + t/2) = 1/100 at 198 */
-        { "hyperbolic", { SM_RESPONSE_HYPERBOLIC, 2, 0, 0 }, 100, 2, 50, 1, 198 },
+        { "hyperbolic", { SM_SIM_RESPONSE_HYPERBOLIC, 2, 0, 0 }, 100, 2, 50, 1, 198 },
         /* a quarter at 9 a; 1 + sqrt(t/0.01) = 100 at 98.01 */
-        { "square root", { SM_RESPONSE_SQRT, 0.01, 0, 0 }, 100, 0.09, 25, 1, 98.01 },
+        { "square root", { SM_SIM_RESPONSE_SQRT, 0.01, 0, 0 }, 100, 0.09, 25, 1, 98.01 },
         /* 80 exp(-1) + 20 exp(-0.05); at long times only 20 exp(-t/20) = 1: 20 ln 20 */
-        { "double", { SM_RESPONSE_DOUBLE, 1, 20, 0.2 }, 100, 1, 48.45494404, 1, 59.91464547 },
+        { "double", { SM_SIM_RESPONSE_DOUBLE, 1, 20, 0.2 }, 100, 1, 48.45494404, 1, 59.91464547 },
         /* overshoots: 120 exp(-1) - 20 exp(-0.05) */
         { "double, overshooting",
-          { SM_RESPONSE_DOUBLE, 1, 20, -0.2 },
+          { SM_SIM_RESPONSE_DOUBLE, 1, 20, -0.2 },
           100,
           1,
           25.12094444,
@@ -152,18 +152,18 @@ static void responses_pass_through_points_worked_by_hand(void **state)
           59.91464547 },
         /* RT/F at 20 °C is 25.26171 mV; a step of that times ln 3 has ln(1 + 2/2) left at t = ln 2;
          * settled where 2 exp(-t) = exp(1/25.26171) - 1 */
-        { "layer", { SM_RESPONSE_LAYER, 1, 0, 0 }, 27.75282, 0.69314718, 17.510082, 1, 3.9027 },
-        { "a step within the tolerance", { SM_RESPONSE_SQRT, 1, 0, 0 }, 0.5, 0, 0.5, 1, 0 },
+        { "layer", { SM_SIM_RESPONSE_LAYER, 1, 0, 0 }, 27.75282, 0.69314718, 17.510082, 1, 3.9027 },
+        { "a step within the tolerance", { SM_SIM_RESPONSE_SQRT, 1, 0, 0 }, 0.5, 0, 0.5, 1, 0 },
     };
 
     (void)state;
     for (size_t i = 0; i < COUNT(cases); i++) {
         char what[80];
         snprintf(what, sizeof what, "%s, left", cases[i].what);
-        check_close(what, sm_response_left(&cases[i].r, cases[i].step, cases[i].t_s), cases[i].want,
-                    1e-5 * fabs(cases[i].want));
+        check_close(what, sm_sim_response_left(&cases[i].r, cases[i].step, cases[i].t_s),
+                    cases[i].want, 1e-5 * fabs(cases[i].want));
         snprintf(what, sizeof what, "%s, settling", cases[i].what);
-        check_close(what, sm_response_settle_s(&cases[i].r, cases[i].step, cases[i].tolerance),
+        check_close(what, sm_sim_response_settle_s(&cases[i].r, cases[i].step, cases[i].tolerance),
                     cases[i].settle_s, 1e-4 * cases[i].settle_s + 1e-9);
     }
 }
@@ -171,24 +171,26 @@ static void responses_pass_through_points_worked_by_hand(void **state)
 /* The definition itself, by brute force: outside just before, never outside after. */
 static void settling_time_is_the_last_moment_outside_the_tolerance(void **state)
 {
-    struct sm_prng p;
+    struct sm_sim_prng p;
 
     (void)state;
-    sm_prng_init(&p, 9, 0);
+    sm_sim_prng_init(&p, 9, 0);
     for (int i = 0; i < 300; i++) {
-        const struct sm_response r = { (enum sm_response_kind)sm_prng_below(&p, SM_RESPONSE_COUNT),
-                                       sm_prng_log_between(&p, 0.1, 40),
-                                       sm_prng_log_between(&p, 1, 400),
-                                       sm_prng_between(&p, -0.3, 0.3) };
-        const double step = sm_prng_between(&p, -200, 200), tolerance = 0.6;
-        const double t_s = sm_response_settle_s(&r, step, tolerance);
-        if (t_s > 0 && !(fabs(sm_response_left(&r, step, t_s * (1 - 1e-3))) > tolerance))
-            fail_msg("case %d, %s: inside already before %g s", i, sm_response_name(r.kind), t_s);
+        const struct sm_sim_response r = {
+            (enum sm_sim_response_kind)sm_sim_prng_below(&p, SM_SIM_RESPONSE_COUNT),
+            sm_sim_prng_log_between(&p, 0.1, 40), sm_sim_prng_log_between(&p, 1, 400),
+            sm_sim_prng_between(&p, -0.3, 0.3)
+        };
+        const double step = sm_sim_prng_between(&p, -200, 200), tolerance = 0.6;
+        const double t_s = sm_sim_response_settle_s(&r, step, tolerance);
+        if (t_s > 0 && !(fabs(sm_sim_response_left(&r, step, t_s * (1 - 1e-3))) > tolerance))
+            fail_msg("case %d, %s: inside already before %g s", i, sm_sim_response_name(r.kind),
+                     t_s);
         for (int k = 0; k < 2000; k++) {
             const double later_s = t_s * (1 + 1e-9) + t_s * k * 0.01 + k * 1e-3;
-            if (!(fabs(sm_response_left(&r, step, later_s)) <= tolerance * (1 + 1e-6)))
+            if (!(fabs(sm_sim_response_left(&r, step, later_s)) <= tolerance * (1 + 1e-6)))
                 fail_msg("case %d, %s: outside at %g s, settled at %g s", i,
-                         sm_response_name(r.kind), later_s, t_s);
+                         sm_sim_response_name(r.kind), later_s, t_s);
         }
     }
 }
@@ -199,7 +201,7 @@ static void readings_follow_the_exponential_from_the_moment_of_immersion(void **
     struct sm_scenario sc = scenario("response 10 s\nstart 100 mV\nshape \"%.6v\\n\"\n"
                                      "rinse 2 s in 100 mV\nin b 0 mV for 60 s\n");
     struct sm_sim *sim = simulator(&sc);
-    char text[SM_SHAPE_LINE];
+    char text[SM_SIM_SHAPE_LINE];
     bool word;
     int64_t t_ns;
     int n = 0;
@@ -222,31 +224,31 @@ static void truth_tells_stays_lifts_and_the_drift_line(void **state)
                                      "in \"tank a\" 0 mV for 20 s at 15 °C as check\n"
                                      "lift 2 s\nback 70 s\nstray 2\nback 80 s\nsilence 3 s\n"
                                      "air 1 s\nrinse 5 s in 20 mV\nin c 50 mV for 10 s\n");
-    struct sm_truth t;
+    struct sm_sim_truth t;
 
     (void)state;
-    assert_int_equal(sm_truth_create(&sc, &t), SM_OK);
+    assert_int_equal(sm_sim_truth_create(&sc, &t), SM_OK);
     assert_int_equal(t.n, 6);
     assert_int_equal(t.end_t_ns, 191 * S);
-    const struct sm_stay *a = &t.stay[0], *c = &t.stay[5];
+    const struct sm_sim_stay *a = &t.stay[0], *c = &t.stay[5];
     assert_int_equal(a->item, 1);
     assert_string_equal(a->name, "tank a");
-    assert_int_equal(a->role, SM_ROLE_CHECK);
+    assert_int_equal(a->role, SM_SIM_ROLE_CHECK);
     assert_int_equal(a->end_t_ns, 175 * S);
     check_close("end, on the drift line", a->end, 0.175, 1e-9);
     check_close("10 ln 100", a->settle_s, 46.05170186, 1e-6);
     check_close("calm between lift and silence", a->calm_s, 150, 1e-9);
     assert_true(a->stayed_three);
-    assert_int_equal(t.stay[1].kind, SM_STEP_LIFT);
-    assert_int_equal(t.stay[2].kind, SM_STEP_SILENCE);
-    assert_int_equal(t.stay[4].kind, SM_STEP_RINSE);
+    assert_int_equal(t.stay[1].kind, SM_SIM_STEP_LIFT);
+    assert_int_equal(t.stay[2].kind, SM_SIM_STEP_SILENCE);
+    assert_int_equal(t.stay[4].kind, SM_SIM_STEP_RINSE);
     assert_int_equal(c->item, 2);
     assert_int_equal(c->begin_t_ns, 181 * S);
     /* from 20 + (0 - 20) exp(-0.5) = 7.8694: a step of 42.1306, 10 ln 42.1306; what was left of
      * tank a, 100 exp(-18.1), is nothing */
     check_close("from where the rinse had come", c->settle_s, 37.40774, 1e-3);
     assert_false(c->stayed_three);
-    sm_truth_free(&t);
+    sm_sim_truth_free(&t);
     sm_scenario_free(&sc);
 }
 
@@ -339,7 +341,7 @@ static void a_line_in_pieces_is_the_same_line(void **state)
 
 static double noise_of(const char *how, double *ret_lag1)
 {
-    char text[120], shown[SM_SHAPE_LINE];
+    char text[120], shown[SM_SIM_SHAPE_LINE];
     double sum = 0, squares = 0, products = 0, last = 0;
     int64_t t_ns;
     bool word;
@@ -389,7 +391,7 @@ static void stray_readings_bubbles_air_and_words_are_as_many_as_told(void **stat
                  "back 10 s\nbubble 8 mV for 5 s\nback 2 s\nair 20 s\n"
                  "air 4 s word OVR\nair 3 s rail 1999.9 mV\nback 1 s\n");
     struct sm_sim *sim = simulator(&sc);
-    char text[SM_SHAPE_LINE];
+    char text[SM_SIM_SHAPE_LINE];
     int strays = 0, bubbles = 0, words = 0, rails = 0, far = 0, still = 0;
     int64_t t_ns;
     bool word;

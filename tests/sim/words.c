@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* words.c: see words.h. */
-#include "words.h"
+#include "sim/words.h"
 
 #include <string.h>
 
@@ -37,7 +37,7 @@ static size_t escape(const char *s, size_t n, size_t at, char *ret)
     return 4;
 }
 
-static void blame(struct sm_words *w, unsigned column, const char *what)
+static void blame(struct sm_sim_words *w, unsigned column, const char *what)
 {
     if (!w->wrong)
         sm_blames_add(w->blames, w->file, w->line, column, "%s", what);
@@ -45,7 +45,8 @@ static void blame(struct sm_words *w, unsigned column, const char *what)
 }
 
 /* Reads the quoted text whose quote is s[at]; returns where it ends, or n after blaming. */
-static size_t quoted(struct sm_words *w, const char *s, size_t n, size_t at, struct sm_word *word)
+static size_t quoted(struct sm_sim_words *w, const char *s, size_t n, size_t at,
+                     struct sm_sim_word *word)
 {
     word->quoted = true;
     for (at++; at < n && s[at] != '"';) {
@@ -57,7 +58,7 @@ static size_t quoted(struct sm_words *w, const char *s, size_t n, size_t at, str
             blame(w, (unsigned)at + 1, "expected \\r \\n \\t \\\\ \\\" or \\xNN");
             return n;
         }
-        if (word->n == SM_SHAPE_TEXT - 1) {
+        if (word->n == SM_SIM_SHAPE_TEXT - 1) {
             blame(w, word->column, "the text is too long");
             return n;
         }
@@ -71,8 +72,8 @@ static size_t quoted(struct sm_words *w, const char *s, size_t n, size_t at, str
     return at + 1;
 }
 
-void sm_words_init(struct sm_words *w, const char *file, unsigned line, const char *text, size_t n,
-                   struct sm_blames *blames)
+void sm_sim_words_init(struct sm_sim_words *w, const char *file, unsigned line, const char *text,
+                       size_t n, struct sm_blames *blames)
 {
     memset(w, 0, sizeof *w);
     w->file = file;
@@ -85,17 +86,17 @@ void sm_words_init(struct sm_words *w, const char *file, unsigned line, const ch
         }
         if (text[at] == '#')
             break;
-        if (w->n == SM_WORDS_PER_LINE) {
+        if (w->n == SM_SIM_WORDS_PER_LINE) {
             blame(w, (unsigned)at + 1, "too many words on this line");
             break;
         }
-        struct sm_word *word = &w->word[w->n++];
+        struct sm_sim_word *word = &w->word[w->n++];
         word->column = (unsigned)at + 1;
         if (text[at] == '"') {
             at = quoted(w, text, n, at, word);
         } else {
             for (; at < n && text[at] != ' ' && text[at] != '\t'; at++) {
-                if (word->n == SM_SHAPE_TEXT - 1) {
+                if (word->n == SM_SIM_SHAPE_TEXT - 1) {
                     blame(w, word->column, "the word is too long");
                     return;
                 }
@@ -106,7 +107,7 @@ void sm_words_init(struct sm_words *w, const char *file, unsigned line, const ch
     }
 }
 
-bool sm_words_expected(struct sm_words *w, const char *what)
+bool sm_sim_words_expected(struct sm_sim_words *w, const char *what)
 {
     char text[SM_BLAME_SIZE];
     struct sm_text t;
@@ -126,42 +127,43 @@ bool sm_words_expected(struct sm_words *w, const char *what)
     return false;
 }
 
-bool sm_words_left(const struct sm_words *w)
+bool sm_sim_words_left(const struct sm_sim_words *w)
 {
     return !w->wrong && w->at < w->n;
 }
 
-bool sm_words_is(struct sm_words *w, const char *word)
+bool sm_sim_words_is(struct sm_sim_words *w, const char *word)
 {
-    if (!sm_words_left(w) || w->word[w->at].quoted || strlen(word) != w->word[w->at].n ||
+    if (!sm_sim_words_left(w) || w->word[w->at].quoted || strlen(word) != w->word[w->at].n ||
         memcmp(word, w->word[w->at].bytes, w->word[w->at].n) != 0)
         return false;
     w->at++;
     return true;
 }
 
-bool sm_words_need(struct sm_words *w, const char *word)
+bool sm_sim_words_need(struct sm_sim_words *w, const char *word)
 {
     char what[64];
     struct sm_text t;
 
     if (w->wrong)
         return false;
-    if (sm_words_is(w, word))
+    if (sm_sim_words_is(w, word))
         return true;
     sm_text_init(&t, what, sizeof what);
     sm_text_addf(&t, "\"%s\"", word);
-    return sm_words_expected(w, what);
+    return sm_sim_words_expected(w, what);
 }
 
-bool sm_words_end(struct sm_words *w)
+bool sm_sim_words_end(struct sm_sim_words *w)
 {
     if (w->wrong)
         return false;
-    return w->at == w->n || sm_words_expected(w, "the end of the line");
+    return w->at == w->n || sm_sim_words_expected(w, "the end of the line");
 }
 
-bool sm_words_number(struct sm_words *w, const char *what, double from, double to, double *ret)
+bool sm_sim_words_number(struct sm_sim_words *w, const char *what, double from, double to,
+                         double *ret)
 {
     double v;
 
@@ -176,14 +178,15 @@ bool sm_words_number(struct sm_words *w, const char *what, double from, double t
         sm_number_write(high, to);
         sm_text_init(&t, text, sizeof text);
         sm_text_addf(&t, "%s, a number from %s to %s", what, low, high);
-        return sm_words_expected(w, text);
+        return sm_sim_words_expected(w, text);
     }
     w->at++;
     *ret = v;
     return true;
 }
 
-bool sm_words_count(struct sm_words *w, const char *what, unsigned from, unsigned to, unsigned *ret)
+bool sm_sim_words_count(struct sm_sim_words *w, const char *what, unsigned from, unsigned to,
+                        unsigned *ret)
 {
     int64_t v;
 
@@ -196,62 +199,64 @@ bool sm_words_count(struct sm_words *w, const char *what, unsigned from, unsigne
         struct sm_text t;
         sm_text_init(&t, text, sizeof text);
         sm_text_addf(&t, "%s, a whole number from %u to %u", what, from, to);
-        return sm_words_expected(w, text);
+        return sm_sim_words_expected(w, text);
     }
     w->at++;
     *ret = (unsigned)v;
     return true;
 }
 
-bool sm_words_text(struct sm_words *w, const char *what, bool needs_quotes,
-                   struct sm_shape_text *ret)
+bool sm_sim_words_text(struct sm_sim_words *w, const char *what, bool needs_quotes,
+                       struct sm_sim_shape_text *ret)
 {
     if (w->wrong)
         return false;
     if (w->at == w->n || w->word[w->at].n == 0 || (needs_quotes && !w->word[w->at].quoted))
-        return sm_words_expected(w, what);
-    const struct sm_word *word = &w->word[w->at++];
+        return sm_sim_words_expected(w, what);
+    const struct sm_sim_word *word = &w->word[w->at++];
     memset(ret, 0, sizeof *ret);
     memcpy(ret->bytes, word->bytes, word->n);
     ret->n = word->n;
     return true;
 }
 
-bool sm_words_quantity(struct sm_words *w, const char *what, double *ret, enum sm_unit *ret_unit)
+bool sm_sim_words_quantity(struct sm_sim_words *w, const char *what, double *ret,
+                           enum sm_unit *ret_unit)
 {
     double v;
     enum sm_unit unit;
 
-    if (!sm_words_number(w, what, -1e9, 1e9, &v))
+    if (!sm_sim_words_number(w, what, -1e9, 1e9, &v))
         return false;
     if (w->at == w->n || w->word[w->at].quoted ||
         sm_unit_parse(w->word[w->at].bytes, w->word[w->at].n, &unit) != SM_OK)
-        return sm_words_expected(w, "a unit");
+        return sm_sim_words_expected(w, "a unit");
     w->at++;
     *ret = v;
     *ret_unit = unit;
     return true;
 }
 
-bool sm_words_in_unit(struct sm_words *w, const char *what, enum sm_unit unit, double *ret)
+bool sm_sim_words_in_unit(struct sm_sim_words *w, const char *what, enum sm_unit unit, double *ret)
 {
     double v;
     enum sm_unit given;
 
-    if (!sm_words_quantity(w, what, &v, &given))
+    if (!sm_sim_words_quantity(w, what, &v, &given))
         return false;
     if (sm_quantity_in((struct sm_quantity){ v, given }, unit, ret) == SM_OK)
         return true;
     w->at--;
-    return sm_words_expected(w, sm_unit_name(unit));
+    return sm_sim_words_expected(w, sm_unit_name(unit));
 }
 
-bool sm_words_time(struct sm_words *w, const char *what, double from_s, double to_s, double *ret_s)
+bool sm_sim_words_time(struct sm_sim_words *w, const char *what, double from_s, double to_s,
+                       double *ret_s)
 {
     double s = 0;
     const size_t began = w->at;
 
-    if (!sm_words_in_unit(w, what, SM_UNIT_S, &s))
+    if (!sm_sim_words_in_unit(w, what, SM_UNIT_S, &s))
         return false;
     if (s >= from_s && s <= to_s) {
         *ret_s = s;
@@ -262,26 +267,27 @@ bool sm_words_time(struct sm_words *w, const char *what, double from_s, double t
     sm_text_init(&t, text, sizeof text);
     sm_text_addf(&t, "%s from %g s to %g s", what, from_s, to_s);
     w->at = began;
-    return sm_words_expected(w, text);
+    return sm_sim_words_expected(w, text);
 }
 
-bool sm_words_percent(struct sm_words *w, const char *what, double from, double to, double *ret)
+bool sm_sim_words_percent(struct sm_sim_words *w, const char *what, double from, double to,
+                          double *ret)
 {
     double v;
 
-    if (!sm_words_number(w, what, 100 * from, 100 * to, &v) || !sm_words_need(w, "%"))
+    if (!sm_sim_words_number(w, what, 100 * from, 100 * to, &v) || !sm_sim_words_need(w, "%"))
         return false;
     *ret = v / 100;
     return true;
 }
 
-bool sm_words_per_s(struct sm_words *w, const char *what, double *ret)
+bool sm_sim_words_per_s(struct sm_sim_words *w, const char *what, double *ret)
 {
-    return sm_words_number(w, what, 0.001, 1000, ret) && sm_words_need(w, "/s");
+    return sm_sim_words_number(w, what, 0.001, 1000, ret) && sm_sim_words_need(w, "/s");
 }
 
-bool sm_words_change(struct sm_words *w, const char *what, double *ret_per_s,
-                     enum sm_unit *ret_unit)
+bool sm_sim_words_change(struct sm_sim_words *w, const char *what, double *ret_per_s,
+                         enum sm_unit *ret_unit)
 {
     static const struct {
         const char *name;
@@ -289,10 +295,10 @@ bool sm_words_change(struct sm_words *w, const char *what, double *ret_per_s,
     } per[] = { { "/s", 1 }, { "/min", 60 }, { "/h", 3600 } };
     double v;
 
-    if (!sm_words_number(w, what, -1e6, 1e6, &v))
+    if (!sm_sim_words_number(w, what, -1e6, 1e6, &v))
         return false;
     for (size_t i = 0; i < sizeof per / sizeof per[0] && w->at < w->n; i++) {
-        const struct sm_word *word = &w->word[w->at];
+        const struct sm_sim_word *word = &w->word[w->at];
         const size_t n = strlen(per[i].name);
         if (word->n > n && memcmp(word->bytes + word->n - n, per[i].name, n) == 0 &&
             sm_unit_parse(word->bytes, word->n - n, ret_unit) == SM_OK) {
@@ -301,5 +307,5 @@ bool sm_words_change(struct sm_words *w, const char *what, double *ret_per_s,
             return true;
         }
     }
-    return sm_words_expected(w, "a unit per time, such as mV/h");
+    return sm_sim_words_expected(w, "a unit per time, such as mV/h");
 }

@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* write.c: see write.h. */
-#include "write.h"
+#include "sim/write.h"
 
 #include <inttypes.h>
 
@@ -35,16 +35,16 @@ static void put_number(FILE *f, double v)
     fputs(s, f);
 }
 
-static void put_stay(FILE *f, const struct sm_stay *s)
+static void put_stay(FILE *f, const struct sm_sim_stay *s)
 {
-    const bool in = s->kind == SM_STEP_IN, wet = in || s->kind == SM_STEP_RINSE;
+    const bool in = s->kind == SM_SIM_STEP_IN, wet = in || s->kind == SM_SIM_STEP_RINSE;
 
     if (in)
         fprintf(f, "%u,", s->item);
     else
         fputc(',', f);
     put_name(f, s->name);
-    fprintf(f, ",%s,", in ? sm_role_name(s->role) : sm_step_name(s->kind));
+    fprintf(f, ",%s,", in ? sm_sim_role_name(s->role) : sm_sim_step_name(s->kind));
     put_time(f, s->begin_t_ns);
     fputc(',', f);
     put_time(f, s->end_t_ns);
@@ -66,10 +66,10 @@ static void put_stay(FILE *f, const struct sm_stay *s)
     fprintf(f, ",%s\n", !in ? "" : s->stayed_three ? "yes" : "no");
 }
 
-enum sm_status sm_write_truth(const struct sm_scenario *sc, FILE *f)
+enum sm_status sm_sim_write_truth(const struct sm_scenario *sc, FILE *f)
 {
-    struct sm_truth t;
-    const enum sm_status status = sm_truth_create(sc, &t);
+    struct sm_sim_truth t;
+    const enum sm_status status = sm_sim_truth_create(sc, &t);
 
     if (status != SM_OK)
         return status;
@@ -79,14 +79,14 @@ enum sm_status sm_write_truth(const struct sm_scenario *sc, FILE *f)
         f);
     for (size_t i = 0; i < t.n; i++)
         put_stay(f, &t.stay[i]);
-    sm_truth_free(&t);
+    sm_sim_truth_free(&t);
     return written(f);
 }
 
-enum sm_status sm_write_csv(const struct sm_scenario *sc, FILE *f)
+enum sm_status sm_sim_write_csv(const struct sm_scenario *sc, FILE *f)
 {
     struct sm_sim *sim;
-    char text[SM_SHAPE_LINE];
+    char text[SM_SIM_SHAPE_LINE];
     int64_t t_ns;
     bool word;
     const enum sm_status status = sm_sim_create(sc, &sim);
@@ -118,7 +118,7 @@ static void put_bytes(FILE *f, const char *bytes, size_t n)
     }
 }
 
-enum sm_status sm_write_lines(const struct sm_scenario *sc, FILE *f)
+enum sm_status sm_sim_write_lines(const struct sm_scenario *sc, FILE *f)
 {
     struct sm_sim *sim;
     char buf[4096];
@@ -143,28 +143,28 @@ enum sm_status sm_write_lines(const struct sm_scenario *sc, FILE *f)
     return written(f);
 }
 
-void sm_write_event_head(FILE *f)
+void sm_sim_write_event_head(FILE *f)
 {
     fputs("time_s,step,name\n", f);
 }
 
-void sm_write_event(FILE *f, int64_t t_ns, const struct sm_step *step)
+void sm_sim_write_event(FILE *f, int64_t t_ns, const struct sm_sim_step *step)
 {
     put_time(f, t_ns);
-    fprintf(f, ",%s,", step ? sm_step_name(step->kind) : "end");
+    fprintf(f, ",%s,", step ? sm_sim_step_name(step->kind) : "end");
     put_name(f, step ? step->name : "");
     fputc('\n', f);
 }
 
-enum sm_status sm_write_events(const struct sm_scenario *sc, FILE *f)
+enum sm_status sm_sim_write_events(const struct sm_scenario *sc, FILE *f)
 {
     int64_t t_ns = 0;
 
-    sm_write_event_head(f);
+    sm_sim_write_event_head(f);
     for (size_t i = 0; i < sc->n_steps; i++) {
-        sm_write_event(f, t_ns, &sc->step[i]);
-        t_ns += sm_step_span_ns(&sc->step[i]);
+        sm_sim_write_event(f, t_ns, &sc->step[i]);
+        t_ns += sm_sim_step_span_ns(&sc->step[i]);
     }
-    sm_write_event(f, t_ns, NULL);
+    sm_sim_write_event(f, t_ns, NULL);
     return written(f);
 }

@@ -12,14 +12,14 @@
 #define SM_SIM_WRITE_H
 #include <stdio.h>
 
-#include "sim.h"
+#include "sim/sim.h"
 
 /* All give SM_EIO when something was not written, SM_ENOMEM. */
-SM_MUST_CHECK enum sm_status sm_write_truth(const struct sm_scenario *sc, FILE *f);
-SM_MUST_CHECK enum sm_status sm_write_csv(const struct sm_scenario *sc, FILE *f);
-SM_MUST_CHECK enum sm_status sm_write_lines(const struct sm_scenario *sc, FILE *f);
-SM_MUST_CHECK enum sm_status sm_write_events(const struct sm_scenario *sc, FILE *f);
+SM_MUST_CHECK enum sm_status sm_sim_write_truth(const struct sm_scenario *sc, FILE *f);
+SM_MUST_CHECK enum sm_status sm_sim_write_csv(const struct sm_scenario *sc, FILE *f);
+SM_MUST_CHECK enum sm_status sm_sim_write_lines(const struct sm_scenario *sc, FILE *f);
+SM_MUST_CHECK enum sm_status sm_sim_write_events(const struct sm_scenario *sc, FILE *f);
 
-void sm_write_event_head(FILE *f);
-void sm_write_event(FILE *f, int64_t t_ns, const struct sm_step *step);
+void sm_sim_write_event_head(FILE *f);
+void sm_sim_write_event(FILE *f, int64_t t_ns, const struct sm_sim_step *step);
 #endif

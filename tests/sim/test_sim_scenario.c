@@ -1,10 +1,11 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* test_scenario.c: what a scenario's text means, what is blamed in it, and the lines of the shapes.
+/* test_sim_scenario.c: what a scenario's text means, what is blamed in it, and the lines of the
+ * shapes.
  */
 #include "check.h"
-#include "prng.h"
-#include "random_session.h"
-#include "scenario.h"
+#include "sim/prng.h"
+#include "sim/random_session.h"
+#include "sim/scenario.h"
 
 #include <stdio.h>
 #include <string.h>
@@ -44,14 +45,14 @@ static void a_full_scenario_is_read_as_written(void **state)
         fail_msg("blamed: line %u: %s", list[0].line, list[0].text);
     assert_int_equal(sc.seed, 7);
     check_close("rate", sc.rate_per_s, 10, 0);
-    assert_int_equal(sc.noise.kind, SM_NOISE_AR);
-    assert_int_equal(sc.response.kind, SM_RESPONSE_DOUBLE);
+    assert_int_equal(sc.noise.kind, SM_SIM_NOISE_AR);
+    assert_int_equal(sc.response.kind, SM_SIM_RESPONSE_DOUBLE);
     check_close("slow share", sc.response.share, -0.1, 1e-15);
     check_close("drift", sc.drift_per_s, 0.001, 1e-15);
     check_close("rinse water unless told", sc.rinse_value, 6.5, 0);
     assert_string_equal(sc.shape.line.bytes, "%.2v mV\r\n");
     assert_int_equal(sc.n_steps, 4);
-    assert_int_equal(sc.step[0].kind, SM_STEP_IN);
+    assert_int_equal(sc.step[0].kind, SM_SIM_STEP_IN);
     assert_string_equal(sc.step[0].name, "tank a");
     check_close("span", sc.step[0].span_s, 90, 1e-12);
     check_close("its temperature", sc.step[0].celsius, 10.8, 0);
@@ -59,7 +60,7 @@ static void a_full_scenario_is_read_as_written(void **state)
     check_close("air", sc.step[1].span_s, 0.8, 1e-12);
     assert_string_equal(sc.step[1].open.word, "----");
     check_close("stray", sc.step[2].amount, -40, 0);
-    assert_int_equal(sc.step[3].kind, SM_STEP_NOISE);
+    assert_int_equal(sc.step[3].kind, SM_SIM_STEP_NOISE);
     sm_scenario_free(&sc);
 }
 
@@ -149,18 +150,19 @@ static void any_text_is_read_or_blamed(void **state)
         "signal mV\nrate 10 /s\nresponse double 1 s 2 s 5 %\nopen word \"----\"\n"
         "shape \"%+07.1v mV*%X\\r\\n\"\nin a 1 mV for 2 s rising 1 mV/h\n"
         "say \"\\x00\" times 3\nrubbish 9 printable\n";
-    struct sm_prng p;
+    struct sm_sim_prng p;
 
     (void)state;
-    sm_prng_init(&p, 5, 0);
+    sm_sim_prng_init(&p, 5, 0);
     for (int round = 0; round < 20000; round++) {
         char text[sizeof good];
         struct sm_scenario sc;
         struct sm_blame list[BLAMES];
         struct sm_blames b;
         memcpy(text, good, sizeof good);
-        for (unsigned changes = 1 + sm_prng_below(&p, 4); changes > 0; changes--)
-            text[sm_prng_below(&p, sizeof good - 1)] = (char)(1 + (int)sm_prng_below(&p, 126));
+        for (unsigned changes = 1 + sm_sim_prng_below(&p, 4); changes > 0; changes--)
+            text[sm_sim_prng_below(&p, sizeof good - 1)] =
+                (char)(1 + (int)sm_sim_prng_below(&p, 126));
         sm_blames_init(&b, list, BLAMES);
         sm_scenario_init(&sc);
         const enum sm_status got = sm_scenario_read(&sc, "x.scn", text, sizeof good - 1, &b);
@@ -175,7 +177,7 @@ static void shapes_write_what_the_profiles_give_as_examples(void **state)
     /* The lines are the `example` of conf/profiles/NAME.yaml; an exponent has two digits here. */
     static const struct {
         const char *shape;
-        struct sm_shown shown;
+        struct sm_sim_shown shown;
         const char *want;
     } cases[] = {
         { "plain-mv", { -12.4, NULL, 24.8, 1 }, "-0012.4 mV  24.8 C\r\n" },
@@ -190,11 +192,11 @@ static void shapes_write_what_the_profiles_give_as_examples(void **state)
 
     (void)state;
     for (size_t i = 0; i < COUNT(cases); i++) {
-        struct sm_shape shape;
-        char got[SM_SHAPE_LINE];
-        if (!sm_shape_known(cases[i].shape, &shape) || sm_shape_wrong(&shape.line))
+        struct sm_sim_shape shape;
+        char got[SM_SIM_SHAPE_LINE];
+        if (!sm_sim_shape_known(cases[i].shape, &shape) || sm_sim_shape_wrong(&shape.line))
             fail_msg("shape %s is not known or not sound", cases[i].shape);
-        const size_t n = sm_shape_write(&shape, &cases[i].shown, got);
+        const size_t n = sm_sim_shape_write(&shape, &cases[i].shown, got);
         if (strcmp(got, cases[i].want) != 0 || n != strlen(cases[i].want))
             fail_msg("%s: got \"%s\", want \"%s\"", cases[i].shape, got, cases[i].want);
     }
@@ -202,36 +204,37 @@ static void shapes_write_what_the_profiles_give_as_examples(void **state)
 
 static void sign_set_apart_exponent_and_checksum_stand_where_told(void **state)
 {
-    struct sm_shape shape;
-    char got[SM_SHAPE_LINE], want[SM_SHAPE_LINE];
-    const struct sm_shown below = { -12.345, NULL, 24.8, 1 }, above = { 12.345, "S3", 24.8, 1 };
+    struct sm_sim_shape shape;
+    char got[SM_SIM_SHAPE_LINE], want[SM_SIM_SHAPE_LINE];
+    const struct sm_sim_shown below = { -12.345, NULL, 24.8, 1 }, above = { 12.345, "S3", 24.8, 1 };
 
     (void)state;
-    assert_true(sm_shape_known("pause-hex", &shape));
-    sm_shape_write(&shape, &below, got);
+    assert_true(sm_sim_shape_known("pause-hex", &shape));
+    sm_sim_shape_write(&shape, &below, got);
     if (strncmp(got, "S0 - 1.2345E-02 V 24.8#", 23) != 0 || strlen(got) != 27)
         fail_msg("below 0: got \"%s\"", got);
-    sm_shape_write(&shape, &above, got);
+    sm_sim_shape_write(&shape, &above, got);
     if (strncmp(got, "S3 1.2345E-02 V 24.8#", 21) != 0)
         fail_msg("above 0, a status word: got \"%s\"", got);
     /* Check value of CRC-16/MODBUS over "123456789": 4B37 (public CRC catalogue). */
-    shape.line = (struct sm_shape_text){ "123456789%-M", 12 };
-    sm_shape_write(&shape, &below, got);
+    shape.line = (struct sm_sim_shape_text){ "123456789%-M", 12 };
+    sm_sim_shape_write(&shape, &below, got);
     assert_string_equal(got, "1234567894B37");
     /* By hand: '1' ^ '2' = 03; 0x31 + 0x32 = 63. */
-    shape.line = (struct sm_shape_text){ "12*%X", 5 };
-    sm_shape_write(&shape, &below, got);
+    shape.line = (struct sm_sim_shape_text){ "12*%X", 5 };
+    sm_sim_shape_write(&shape, &below, got);
     assert_string_equal(got, "12*03");
-    shape.line = (struct sm_shape_text){ "12*%S", 5 };
-    sm_shape_write(&shape, &below, got);
+    shape.line = (struct sm_sim_shape_text){ "12*%S", 5 };
+    sm_sim_shape_write(&shape, &below, got);
     assert_string_equal(got, "12*63");
     /* The longest line there can be stays in its storage. */
-    shape.line = (struct sm_shape_text){ "%20.9v%20.9v%20.9v%20.9v%20.9v%20.9v%20.9v%20.9v", 48 };
-    assert_null(sm_shape_wrong(&shape.line));
-    const struct sm_shown huge = { -1e300, NULL, 1e300, 1 };
-    const size_t n = sm_shape_write(&shape, &huge, want);
+    shape.line =
+        (struct sm_sim_shape_text){ "%20.9v%20.9v%20.9v%20.9v%20.9v%20.9v%20.9v%20.9v", 48 };
+    assert_null(sm_sim_shape_wrong(&shape.line));
+    const struct sm_sim_shown huge = { -1e300, NULL, 1e300, 1 };
+    const size_t n = sm_sim_shape_write(&shape, &huge, want);
     assert_int_equal(strlen(want), n);
-    assert_true(n < SM_SHAPE_LINE);
+    assert_true(n < SM_SIM_SHAPE_LINE);
 }
 
 static void a_random_session_keeps_its_promises(void **state)
@@ -246,13 +249,13 @@ static void a_random_session_keeps_its_promises(void **state)
     sm_scenario_init(&sc);
     assert_int_equal(sm_random_session_make(&r, &sc), SM_OK);
     for (size_t i = 0; i < sc.n_steps; i++) {
-        const struct sm_step *s = &sc.step[i];
-        if (s->kind == SM_STEP_RINSE && !(s->span_s < r.dwell_s))
+        const struct sm_sim_step *s = &sc.step[i];
+        if (s->kind == SM_SIM_STEP_RINSE && !(s->span_s < r.dwell_s))
             fail_msg("step %zu: a rinse of %g s is no shorter than the dwell", i, s->span_s);
-        if (s->kind != SM_STEP_IN)
+        if (s->kind != SM_SIM_STEP_IN)
             continue;
         const double step = s->value > last ? s->value - last : last - s->value;
-        if (sc.step[i - 1].kind != SM_STEP_AIR)
+        if (sc.step[i - 1].kind != SM_SIM_STEP_AIR)
             fail_msg("beaker %u is opened by no transit", beakers + 1);
         if (!(step >= r.step_from * (1 - 1e-9) && step <= r.step_to * (1 + 1e-9)))
             fail_msg("beaker %u: a step of %g mV", beakers + 1, step);

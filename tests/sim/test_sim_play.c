@@ -1,5 +1,5 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* test_play.c: `stillmark-sim` itself: files, and a meter on a pseudo-terminal. */
+/* test_sim_play.c: `stillmark-sim` itself: files, and a meter on a pseudo-terminal. */
 #include "check.h"
 
 #include <errno.h>
