@@ -176,7 +176,7 @@ enum sm_status sm_hub_create(const struct sm_hub_about *about, const char *path,
     if (s == SM_OK) {
         h->sweep = event_new(about->base, -1, 0, on_sweep, h);
         h->accept = event_new(about->base, h->fd, EV_READ | EV_PERSIST, on_accept, h);
-        if (h->sweep == NULL || h->accept == NULL || event_add(h->accept, NULL) != 0)
+        if (h->sweep == NULL || h->accept == NULL)
             s = SM_ENOMEM;
     }
     if (s != SM_OK) {
@@ -185,6 +185,11 @@ enum sm_status sm_hub_create(const struct sm_hub_about *about, const char *path,
     }
     *ret_hub = h;
     return SM_OK;
+}
+
+enum sm_status sm_hub_open(struct sm_hub *h)
+{
+    return event_add(h->accept, NULL) == 0 ? SM_OK : SM_ENOMEM;
 }
 
 void sm_hub_destroy(struct sm_hub *h)

@@ -33,11 +33,13 @@ struct sm_hub_about {
     void (*after)(void *ctx, struct sm_meter *m); /* a meter was told something */
 };
 
-/* Listens on a Unix socket (0660). What a daemon that died left behind is taken away; one that
- * lives is not disturbed. SM_EBUSY  another daemon listens there SM_EIO, SM_ENOMEM: ret_why */
+/* A Unix socket (0660); who connects waits until sm_hub_open. What a daemon that died left behind
+ * is taken away; one that lives is not disturbed. SM_EBUSY  another daemon listens there SM_EIO,
+ * SM_ENOMEM: ret_why */
 SM_MUST_CHECK enum sm_status sm_hub_create(const struct sm_hub_about *about, const char *path,
                                            struct sm_hub **ret_hub, char ret_why[SM_WHY_SIZE]);
-void sm_hub_destroy(struct sm_hub *h); /* NULL is fine */
+SM_MUST_CHECK enum sm_status sm_hub_open(struct sm_hub *h); /* SM_ENOMEM */
+void sm_hub_destroy(struct sm_hub *h);                      /* NULL is fine */
 
 /* For the meters' hooks (h may be NULL: nobody is there). */
 void sm_hub_line(struct sm_hub *h, struct sm_meter *m, const char *line, size_t n);

@@ -53,8 +53,8 @@ static enum sm_status read_key(const struct sm_door *door, int fd, const char *p
     }
     if ((st.st_mode & 077) != 0) {
         snprintf(ret_why, 512,
-                 "%.200s: others may read the signing key (mode %04o). If nobody did: chmod 600 "
-                 "%.200s; else move it away, and a new one is made",
+                 "%.120s: others may read the signing key (mode %04o). If nobody did: chmod 600 "
+                 "%.120s; else move it away, and a new one is made",
                  path, (unsigned)(st.st_mode & 07777), path);
         return SM_EINVAL;
     }

@@ -58,6 +58,11 @@ void sm_meter_destroy(struct sm_meter *m)
     free(m);
 }
 
+int sm_meter_written_fd(const struct sm_meter *m)
+{
+    return sm_writer_fd(m->writer);
+}
+
 const char *sm_meter_name(const struct sm_meter *m)
 {
     return m->name;
@@ -265,7 +270,8 @@ void sm_meter_stop(struct sm_meter *m, const struct sm_now *now)
         sm_meter_close_file(m, now, "stopped");
         check_log(m, now);
     } else if (m->log != LOG_CLOSING) {
-        m->log = LOG_CLOSED; /* nothing of it can be lost: nothing was announced */
+        m->closed_well = !m->missed.is; /* no file is open */
+        m->log = LOG_CLOSED;
     }
 }
 
