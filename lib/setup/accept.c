@@ -18,7 +18,7 @@ static void sense(enum sm_unit unit, double *ret_least, double *ret_most)
     } table[] = { { SM_UNIT_MV, 0.001, 2000 },   { SM_UNIT_V, 1e-6, 2 },
                   { SM_UNIT_PH, 0.001, 3 },      { SM_UNIT_A, 1e-5, 10 },
                   { SM_UNIT_US_CM, 0.001, 1e6 }, { SM_UNIT_MS_CM, 1e-6, 1000 },
-                  { SM_UNIT_MG_L, 1e-9, 1e6 },   { SM_UNIT_UG_L, 1e-6, 1e9 },
+                  { SM_UNIT_MG_L, 1e-6, 1e6 },   { SM_UNIT_UG_L, 0.001, 1e8 },
                   { SM_UNIT_PERCENT, 0.01, 100 } };
 
     *ret_least = 1e-9;
@@ -35,6 +35,8 @@ bool sm_get_limit(const struct sm_reader *r, const struct sm_node *node, enum sm
 {
     double least, most;
 
+    if (unit == SM_UNIT_COUNT)
+        return false;
     sense(unit, &least, &most);
     return sm_get_quantity(r, node, unit, least, most, ret_value);
 }
@@ -163,7 +165,8 @@ static void fill_curve_rules(const struct sm_reader *r, const struct sm_node *ro
     m->curve_valid_ns = 8 * HOUR;
     sm_get_time(r, sm_key(root, "curve-valid"), MIN, 90 * 24 * HOUR, &m->curve_valid_ns);
     /* leave-one-out does not count: a curve is not judged by it yet */
-    if (!m->residual_sd.has && !m->slope.from.has && !m->offset.from.has && !m->back_calculated.has)
+    if (m->signal_unit != SM_UNIT_COUNT && m->measures != SM_UNIT_COUNT && !m->residual_sd.has &&
+        !m->slope.from.has && !m->offset.from.has && !m->back_calculated.has)
         sm_blame(r, r_squared != NULL ? r_squared : root,
                  "%sR² alone accepts no curve, a wrong standard hardly changes it: add residual-sd "
                  "or back-calculated",

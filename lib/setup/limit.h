@@ -4,7 +4,8 @@
 #define SM_SETUP_LIMIT_H
 #include "setup/parts.h"
 
-/* A limit: a quantity above 0 that converts to `unit`, within what makes sense there. */
+/* A limit: a quantity above 0 that converts to `unit`, within what makes sense there. A unit that
+ * is not known (SM_UNIT_COUNT: blamed already) takes none, silently. */
 bool sm_get_limit(const struct sm_reader *r, const struct sm_node *node, enum sm_unit unit,
                   double *ret_value);
 

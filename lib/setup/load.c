@@ -6,9 +6,10 @@
 
 #include "setup/parts.h"
 
-#define SOCKET_PATH_MOST 107 /* bytes of a Unix socket's path (Linux, unix(7): 108 with the NUL)   \
-                              */
-#define METHOD_NAMES_MAX 64  /* listed before they are read */
+#define SOCKET_PATH_MOST                                                                           \
+    107                     /* bytes of a Unix socket's path (Linux, unix(7): 108 with the NUL)    \
+                             */
+#define METHOD_NAMES_MAX 64 /* listed before they are read */
 
 /* FOLDER-OF-SETUP/sub/name.yaml */
 static bool path_of(const struct sm_loader *l, const char *sub, const char *name,

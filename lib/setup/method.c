@@ -58,6 +58,7 @@ static void fill_model(const struct sm_reader *r, const struct sm_node *node, st
 
     for (size_t i = 0; i < SM_MODEL_COUNT; i++)
         names[i] = sm_model_name((enum sm_model)i);
+    m->model = m->measures == SM_UNIT_PH ? SM_MODEL_NERNST : SM_MODEL_LINE; /* if blamed: likely */
     if (!sm_get_choice(r, node, names, SM_MODEL_COUNT, &at))
         return;
     m->model = (enum sm_model)at;
@@ -70,6 +71,7 @@ static void fill_measures(const struct sm_reader *r, const struct sm_node *node,
 {
     enum sm_unit u;
 
+    m->measures = SM_UNIT_COUNT;
     if (node == NULL)
         return;
     if (node->kind != SM_NODE_TEXT || sm_unit_parse(node->text, node->n, &u) != SM_OK ||
@@ -134,10 +136,11 @@ static void find_signal_unit(const struct sm_reader *r, const struct sm_node *ro
 
     m->signal_unit = SM_UNIT_MV;
     if (is_nernst(m)) {
-        if (m->measures != SM_UNIT_PH && m->measures != SM_UNIT_NONE)
+        if (m->measures != SM_UNIT_PH && m->measures != SM_UNIT_COUNT)
             sm_blame_got(r, sm_key(root, "measures"), "expected pH with model: nernst");
         return;
     }
+    m->signal_unit = SM_UNIT_COUNT;
     if (node != NULL && node->kind == SM_NODE_MAP)
         node = sm_key(node, "standards");
     if (node == NULL)
@@ -274,7 +277,7 @@ static void get_drift(const struct sm_reader *r, const struct sm_node *node,
     struct sm_quantity q;
     double v = 0;
 
-    if (node == NULL)
+    if (node == NULL || m->signal_unit == SM_UNIT_COUNT)
         return;
     if (is_nernst(m) && sm_get_any_quantity(node, &q) && q.unit == SM_UNIT_PH_MIN) {
         if (sm_get_quantity(r, node, SM_UNIT_PH_MIN, 0, 1, &v))

@@ -7,7 +7,7 @@
 #include "reading/parse.h"
 #include "setup/parts.h"
 
-#define FIELDS_MAX 64
+#define UNKNOWN SM_UNIT_COUNT /* a unit that was blamed: what depends on it is not judged */
 
 /* The scalar's characters as bytes: U+0000 to U+00FF is the byte of that code. */
 static bool get_bytes(const struct sm_reader *r, const struct sm_node *node, const char *what,
@@ -182,14 +182,17 @@ static void fill_field(const struct sm_reader *r, const struct sm_node *map, con
     if (node != NULL && pattern)
         sm_blame(r, node, "not used with a pattern: its groups are found by name");
     else
-        sm_get_count(r, node, 1, FIELDS_MAX, ret_at);
+        sm_get_count(r, node, 1, SM_FIELDS_MAX, ret_at);
 }
 
 static void fill_unit(const struct sm_reader *r, const struct sm_node *node, enum sm_unit *ret_unit)
 {
-    if (node == NULL || sm_is_word(node, "none"))
+    *ret_unit = UNKNOWN;
+    if (node == NULL)
         return;
-    if (node->kind != SM_NODE_TEXT || sm_unit_parse(node->text, node->n, ret_unit) != SM_OK)
+    if (sm_is_word(node, "none"))
+        *ret_unit = SM_UNIT_NONE;
+    else if (node->kind != SM_NODE_TEXT || sm_unit_parse(node->text, node->n, ret_unit) != SM_OK)
         sm_blame_got(r, node, "expected a unit such as mV, pH, °C, A, µS/cm, mg/L or none");
 }
 
@@ -198,13 +201,13 @@ static void fill_plausible(const struct sm_reader *r, const struct sm_node *map,
 {
     static const char *const keys[] = { "from", "to", NULL };
 
-    if (!sm_keys_known(r, map, keys))
+    if (!sm_keys_known(r, map, keys) || c->unit == UNKNOWN)
         return;
     c->has_plausible = true;
     if (sm_get_quantity(r, sm_need(r, map, "from", "the lowest plausible value"), c->unit, -1e9,
                         1e9, &c->plausible_from) &&
-        sm_get_quantity(r, sm_need(r, map, "to", "the highest plausible value"), c->unit, -1e9, 1e9,
-                        &c->plausible_to) &&
+        sm_get_quantity(r, sm_need(r, map, "to", "the highest plausible value"), c->unit,
+                        -SM_ANY_VALUE, SM_ANY_VALUE, &c->plausible_to) &&
         !(c->plausible_from < c->plausible_to))
         sm_blame(r, map, "from must be less than to");
 }
@@ -212,7 +215,7 @@ static void fill_plausible(const struct sm_reader *r, const struct sm_node *map,
 static void fill_scale(const struct sm_reader *r, const struct sm_node *node, struct sm_channel *c)
 {
     c->scale = 1.0;
-    if (sm_get_number(r, node, -1e9, 1e9, &c->scale) && c->scale == 0.0) {
+    if (sm_get_number(r, node, -SM_ANY_VALUE, SM_ANY_VALUE, &c->scale) && c->scale == 0.0) {
         sm_blame_got(r, node, "expected a number other than 0");
         c->scale = 1.0;
     }
@@ -321,7 +324,9 @@ static void fill_example_value(const struct sm_reader *r, const struct sm_node *
     const int i = sm_profile_channel(p, node->key);
 
     if (i >= 0) {
-        if (sm_get_quantity(r, node, p->channel[i].unit, -1e9, 1e9, &p->example.want[i]))
+        if (p->channel[i].unit != UNKNOWN &&
+            sm_get_quantity(r, node, p->channel[i].unit, -SM_ANY_VALUE, SM_ANY_VALUE,
+                            &p->example.want[i]))
             p->example.has[i] = true;
         return;
     }

@@ -101,9 +101,9 @@ static void fill_band(const struct sheet_reader *s, const struct sm_node *map, s
     if (!sm_keys_known(s->r, map, keys) || m == NULL)
         return;
     if (sm_get_quantity(s->r, sm_need(s->r, map, "from", "the lowest plausible result"),
-                        m->measures, -1e9, 1e9, &item->band_from) &&
+                        m->measures, -SM_ANY_VALUE, SM_ANY_VALUE, &item->band_from) &&
         sm_get_quantity(s->r, sm_need(s->r, map, "to", "the highest plausible result"), m->measures,
-                        -1e9, 1e9, &item->band_to)) {
+                        -SM_ANY_VALUE, SM_ANY_VALUE, &item->band_to)) {
         item->has_band = true;
         if (!(item->band_from < item->band_to))
             sm_blame(s->r, map, "from must be less than to");

@@ -6,15 +6,6 @@
 
 #include "setup/parts.h"
 
-static void add_parent(char out[SM_SETUP_PATH_SIZE], const char *file, const char *tail,
-                       const struct sm_reader *r, const struct sm_node *node)
-{
-    if (!sm_path_beside(out, file, tail)) {
-        sm_blame(r, node, "the path is too long");
-        out[0] = '\0';
-    }
-}
-
 /* A path below the standards file's folder: no way up, not from the root. */
 static bool stays_below(const struct sm_node *node)
 {
@@ -42,8 +33,11 @@ static void fill_table(struct sm_loader *l, const struct sm_reader *r, const str
         sm_blame_got(r, node, "expected a file below this folder, such as tables/buffers.csv");
         return;
     }
-    add_parent(name, r->file, node->text, r, node);
-    if (name[0] == '\0' || (t->n_rows > 0 && strcmp(t->name, name) == 0))
+    if (!sm_path_beside(name, r->file, node->text)) {
+        sm_blame(r, node, "the path is too long");
+        return;
+    }
+    if (t->n_rows > 0 && strcmp(t->name, name) == 0)
         return;
     if (t->n_rows > 0) {
         sm_blame(r, node, "one table serves all standards: %s is read already", t->name);
@@ -60,7 +54,9 @@ static void fill_table(struct sm_loader *l, const struct sm_reader *r, const str
     sm_text_copy(t->name, sizeof t->name, name);
 }
 
-/* ---- one standard ---- */
+/* ---- one standard; t is NULL where the table was blamed ---- */
+
+#define UNKNOWN SM_UNIT_COUNT
 
 static bool is_standard_unit(enum sm_unit u)
 {
@@ -131,6 +127,8 @@ static void fill_column(const struct sm_reader *r, const struct sm_node *node,
 
     if (node == NULL || !sm_get_name(r, node, "a column of the table", name))
         return;
+    if (t == NULL)
+        return;
     if (t->n_rows == 0) {
         sm_blame(r, node, "no table to take the column from (\"table: FILE\" at the head)");
         return;
@@ -156,7 +154,7 @@ static void fill_u(const struct sm_reader *r, const struct sm_node *node, struct
     double percent = 0;
     struct sm_quantity q;
 
-    if (node == NULL)
+    if (node == NULL || s->unit == UNKNOWN)
         return;
     if (sm_get_any_quantity(node, &q) && q.unit == SM_UNIT_PERCENT && s->unit != SM_UNIT_PERCENT &&
         s->n_values == 1) {
@@ -164,7 +162,7 @@ static void fill_u(const struct sm_reader *r, const struct sm_node *node, struct
             s->u = fabs(s->value[0]) * percent / 100;
         return;
     }
-    sm_get_quantity(r, node, s->unit, 0, s->unit == SM_UNIT_PH ? 1 : 1e9, &s->u);
+    sm_get_quantity(r, node, s->unit, 0, s->unit == SM_UNIT_PH ? 1 : SM_ANY_VALUE, &s->u);
 }
 
 static void fill_dates(const struct sm_reader *r, const struct sm_node *map, struct sm_standard *s)
@@ -183,6 +181,7 @@ static void fill_standard(const struct sm_reader *r, const struct sm_node *map,
     const struct sm_node *values, *value, *column;
 
     s->table_column = -1;
+    s->unit = UNKNOWN;
     if (!sm_keys_known(r, map, keys))
         return;
     sm_get_name(r, sm_need(r, map, "name", "the standard's name"), "a name", s->name);
@@ -210,10 +209,12 @@ void sm_standards_fill(struct sm_loader *l, const struct sm_reader *r, const str
 {
     static const char *const keys[] = { "table", "standards", NULL };
     const struct sm_node *list;
+    bool table_bad;
 
     if (!sm_keys_known(r, root, keys))
         return;
     fill_table(l, r, sm_key(root, "table"), &s->table);
+    table_bad = sm_key(root, "table") != NULL && s->table.n_rows == 0;
     list = sm_need(r, root, "standards", "the list of standards");
     if (!sm_is_list(r, list, 1, SM_STANDARDS_MAX, "standards"))
         return;
@@ -225,7 +226,7 @@ void sm_standards_fill(struct sm_loader *l, const struct sm_reader *r, const str
             return;
         }
         one = &s->list[s->n];
-        fill_standard(r, c, &s->table, one);
+        fill_standard(r, c, table_bad ? NULL : &s->table, one);
         if (one->name[0] != '\0' && sm_standards_find(s, one->name) >= 0)
             sm_blame(r, sm_key(c, "name"), "a second standard of the name \"%s\"", one->name);
         s->n++;

@@ -408,7 +408,7 @@ const char *sm_unit_kind(enum sm_unit unit)
     case SM_UNIT_V:
         return "a potential";
     case SM_UNIT_PH:
-        return "a pH";
+        return "a pH value";
     case SM_UNIT_CELSIUS:
         return "a temperature";
     case SM_UNIT_A:
@@ -447,10 +447,20 @@ static void add_quantity(struct sm_text *t, double v, enum sm_unit unit)
 
 void sm_range_text(struct sm_text *t, enum sm_unit unit, double from, double to)
 {
-    sm_text_addf(t, "%s between ", sm_unit_kind(unit));
-    add_quantity(t, from, unit);
-    sm_text_add(t, " and ");
-    add_quantity(t, to, unit);
+    if (from <= -SM_ANY_VALUE && unit != SM_UNIT_NONE) {
+        sm_text_addf(t, "a value in %s", sm_unit_name(unit));
+        return;
+    }
+    sm_text_add(t, sm_unit_kind(unit));
+    if (to >= SM_ANY_VALUE) {
+        sm_text_add(t, " of at least ");
+        add_quantity(t, from, unit);
+    } else {
+        sm_text_add(t, " between ");
+        add_quantity(t, from, unit);
+        sm_text_add(t, " and ");
+        add_quantity(t, to, unit);
+    }
 }
 
 bool sm_get_quantity(const struct sm_reader *r, const struct sm_node *node, enum sm_unit unit,

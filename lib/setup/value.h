@@ -66,6 +66,7 @@ bool sm_get_number(const struct sm_reader *r, const struct sm_node *node, double
                    double *ret_number);
 bool sm_get_time(const struct sm_reader *r, const struct sm_node *node, int64_t from_ns,
                  int64_t to_ns, int64_t *ret_ns);
+#define SM_ANY_VALUE 1e9 /* a bound that says: no bound that a person would need to hear */
 /* A quantity that converts to `unit`, from <= value <= to there. */
 bool sm_get_quantity(const struct sm_reader *r, const struct sm_node *node, enum sm_unit unit,
                      double from, double to, double *ret_value);
