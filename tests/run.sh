@@ -72,7 +72,11 @@ for t in test_run test_judge test_core test_signal test_frame test_parse; do
 done
 
 echo "== lint =="
-sh tests/lint.sh build >build/lint.log 2>&1
+{
+    sh tests/lint.sh build
+    sh tests/lint.sh build tidy
+    sh tests/lint_proof.sh
+} >build/lint.log 2>&1
 grep -v '^ok ' build/lint.log | head -n 60
 count lint "$(grep -c '^ok ' build/lint.log)" "$(grep -c '^FAILED ' build/lint.log)"
 
