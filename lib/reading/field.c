@@ -85,6 +85,11 @@ bool sm_span_is(struct sm_span s, const char *word)
     return i == s.n && k == word_n;
 }
 
+bool sm_span_is_sign(struct sm_span s)
+{
+    return s.n == 1 && (s.s[0] == '+' || s.s[0] == '-');
+}
+
 const char *sm_span_in(struct sm_span s, const char words[SM_WORDS_MAX][SM_WORD_SIZE])
 {
     if (s.n == 0)

@@ -22,6 +22,9 @@ size_t sm_fields_split(enum sm_split split, char c, struct sm_span line,
  * meter's ° is often the one byte B0). */
 bool sm_span_is(struct sm_span s, const char *word);
 
+/* "+" or "-" and nothing else. */
+bool sm_span_is_sign(struct sm_span s);
+
 /* Which of a profile's words of one meaning it is; NULL: none of them. */
 const char *sm_span_in(struct sm_span s, const char words[SM_WORDS_MAX][SM_WORD_SIZE]);
 

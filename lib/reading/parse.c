@@ -12,6 +12,7 @@
 #include "reading/checksum.h"
 #include "reading/field.h"
 #include "reading/pattern.h"
+#include "reading/value.h"
 
 #define STX 0x02
 
@@ -29,9 +30,7 @@ struct sm_parser {
 };
 
 struct slots {
-    struct {
-        struct sm_span value, unit, sign;
-    } channel[SM_CHANNELS_MAX];
+    struct sm_pieces channel[SM_CHANNELS_MAX];
     struct sm_span status;
 };
 
@@ -224,11 +223,6 @@ static enum sm_status check_sum(const struct sm_checksum_rule *rule, struct sm_s
 
 /* ---- taking a line apart ---- */
 
-static bool is_lone_sign(struct sm_span s)
-{
-    return s.n == 1 && (s.s[0] == '+' || s.s[0] == '-');
-}
-
 /* Fields by the profile's numbers: where a line split by spaces leaves out a sign set apart (a
  * meter that prints none for positive numbers), the numbers after it stand. */
 static size_t number_fields(const struct sm_parser *p, struct sm_span line,
@@ -241,7 +235,7 @@ static size_t number_fields(const struct sm_parser *p, struct sm_span line,
     memset(ret_field, 0, (SM_FIELDS_MAX + 1) * sizeof *ret_field);
     for (size_t at = 1; at <= SM_FIELDS_MAX && k < n; at++) {
         const bool left_out =
-            p->is_sign[at] && p->profile->split == SM_SPLIT_SPACES && !is_lone_sign(sent[k]);
+            p->is_sign[at] && p->profile->split == SM_SPLIT_SPACES && !sm_span_is_sign(sent[k]);
         if (!left_out)
             ret_field[at] = sent[k++];
     }
@@ -256,11 +250,19 @@ static void slots_by_field(const struct sm_parser *p, struct sm_span line, struc
     for (size_t i = 0; i < p->profile->n_channels; i++) {
         const struct sm_channel *c = &p->profile->channel[i];
 
-        ret_slots->channel[i].value = field[c->at];
-        ret_slots->channel[i].unit = field[c->unit_at]; /* field 0 is never there */
-        ret_slots->channel[i].sign = field[c->sign_at];
+        ret_slots->channel[i] = (struct sm_pieces){
+            .value = field[c->at],
+            .unit = field[c->unit_at], /* field 0 is never there */
+            .sign = field[c->sign_at],
+            .unit_wanted = c->unit_at != 0,
+        };
     }
     ret_slots->status = field[p->profile->status_at];
+}
+
+static struct sm_span group_span(const struct sm_parser *p, int group, struct sm_span line)
+{
+    return sm_span_trim(sm_pattern_span(p->pattern, group, line));
 }
 
 static enum sm_status slots_by_pattern(struct sm_parser *p, struct sm_span line,
@@ -281,153 +283,15 @@ static enum sm_status slots_by_pattern(struct sm_parser *p, struct sm_span line,
     for (size_t i = 0; i < p->profile->n_channels; i++) {
         const struct groups *g = &p->groups[i];
 
-        ret_slots->channel[i].value = sm_span_trim(sm_pattern_span(p->pattern, g->value, line));
-        ret_slots->channel[i].unit = sm_span_trim(sm_pattern_span(p->pattern, g->unit, line));
-        ret_slots->channel[i].sign = sm_span_trim(sm_pattern_span(p->pattern, g->sign, line));
+        ret_slots->channel[i] = (struct sm_pieces){
+            .value = group_span(p, g->value, line),
+            .unit = group_span(p, g->unit, line),
+            .sign = group_span(p, g->sign, line),
+            .unit_wanted = g->unit != 0,
+        };
     }
-    ret_slots->status = sm_span_trim(sm_pattern_span(p->pattern, p->status_group, line));
+    ret_slots->status = group_span(p, p->status_group, line);
     return SM_OK;
-}
-
-/* ---- reading a channel ---- */
-
-static enum sm_status expected(const struct sm_parser *p, size_t i, unsigned at, const char *what,
-                               struct sm_span got, struct sm_text *why)
-{
-    if (p->pattern != NULL)
-        sm_text_addf(why, "%s: ", p->profile->channel[i].name);
-    else
-        sm_text_addf(why, "field %u: ", at);
-    sm_text_addf(why, "expected %s, got ", what);
-    if (got.n == 0)
-        sm_text_add(why, "nothing");
-    else
-        sm_span_quote(why, got);
-    return SM_ESYNTAX;
-}
-
-/* The flag that a word stands for and the word as the profile has it; SM_FLAG_OK: none of its
- * words. */
-static enum sm_flag flag_of(const struct sm_profile *p, struct sm_span s, const char **ret_word)
-{
-    if ((*ret_word = sm_span_in(s, p->over)) != NULL)
-        return SM_FLAG_OVER;
-    if ((*ret_word = sm_span_in(s, p->under)) != NULL)
-        return SM_FLAG_UNDER;
-    if ((*ret_word = sm_span_in(s, p->open)) != NULL)
-        return SM_FLAG_OPEN;
-    *ret_word = sm_span_in(s, p->unusable);
-    return *ret_word != NULL ? SM_FLAG_UNUSABLE : SM_FLAG_OK;
-}
-
-/* Sign and number in one piece: a sign set apart, in its own slot or by blanks, goes in front. */
-static bool join_sign(struct sm_span sign, struct sm_span number, char ret_digits[SM_DIGITS_SIZE])
-{
-    size_t k = 0;
-
-    if (sign.n > 0) {
-        if (!is_lone_sign(sign))
-            return false;
-        ret_digits[k++] = sign.s[0];
-    } else if (number.n > 1 && (number.s[0] == '+' || number.s[0] == '-')) {
-        ret_digits[k++] = number.s[0];
-        number.s++;
-        number.n--;
-        number = sm_span_trim(number);
-    }
-    if (number.n == 0 || number.n + k >= SM_DIGITS_SIZE || number.s[0] == '+' ||
-        number.s[0] == '-' || memchr(number.s, '\0', number.n) != NULL)
-        return false;
-    memcpy(ret_digits + k, number.s, number.n);
-    ret_digits[k + number.n] = '\0';
-    return true;
-}
-
-/* The number as sent into base/number's form. False: the wrong decimal sign. */
-static bool with_point(const struct sm_profile *p, const char *digits,
-                       char ret_plain[SM_DIGITS_SIZE])
-{
-    size_t i = 0;
-
-    for (; digits[i] != '\0'; i++) {
-        if (p->decimal_comma && digits[i] == '.')
-            return false;
-        ret_plain[i] = digits[i];
-        if (p->decimal_comma && digits[i] == ',')
-            ret_plain[i] = '.';
-    }
-    ret_plain[i] = '\0';
-    return true;
-}
-
-static bool unit_is(const struct sm_channel *c, struct sm_span unit)
-{
-    enum sm_unit u;
-
-    if (c->written[0] != '\0')
-        return sm_span_is(unit, c->written);
-    if (sm_unit_parse(unit.n > 0 ? unit.s : "", unit.n, &u) == SM_OK)
-        return u == c->unit;
-    return sm_span_is(unit, sm_unit_name(c->unit));
-}
-
-static enum sm_status read_number(const struct sm_parser *p, size_t i, const struct slots *slots,
-                                  struct sm_value *v, struct sm_text *why)
-{
-    const struct sm_channel *c = &p->profile->channel[i];
-    const struct sm_span number = slots->channel[i].value, sign = slots->channel[i].sign;
-    char plain[SM_DIGITS_SIZE];
-    enum sm_status status;
-    double sent;
-
-    if (sign.n > 0 && !is_lone_sign(sign))
-        return expected(p, i, c->sign_at, "+ or -", sign, why);
-    if (!join_sign(sign, number, v->digits))
-        return expected(p, i, c->at, "a number", number, why);
-    if (!with_point(p->profile, v->digits, plain))
-        return expected(p, i, c->at, "a number with a decimal comma", number, why);
-    status = sm_number_parse(plain, strlen(plain), &sent);
-    if (status == SM_EVALUE || (status == SM_OK && !isfinite(sent * c->scale)))
-        return expected(p, i, c->at, "a number that is not too large", number, why);
-    if (status != SM_OK)
-        return expected(p, i, c->at, "a number", number, why);
-    v->value = sent * c->scale;
-    v->step = sm_number_step(plain, strlen(plain)) * fabs(c->scale);
-    if (!isfinite(v->step)) /* "0e400" */
-        v->step = 0;
-    if (c->has_plausible && !(v->value >= c->plausible_from && v->value <= c->plausible_to))
-        v->flag = SM_FLAG_OPEN;
-    return SM_OK;
-}
-
-static enum sm_status read_channel(const struct sm_parser *p, size_t i, const struct slots *slots,
-                                   struct sm_value *v, struct sm_text *why)
-{
-    const struct sm_channel *c = &p->profile->channel[i];
-    const struct sm_span value = slots->channel[i].value, unit = slots->channel[i].unit;
-    const bool has_unit = p->pattern != NULL ? p->groups[i].unit != 0 : c->unit_at != 0;
-    enum sm_status status;
-    const char *word;
-
-    if (value.n == 0)
-        return SM_OK;
-    v->present = true;
-    v->flag = flag_of(p->profile, value, &word);
-    if (word != NULL) { /* beside a word some meters leave the unit out */
-        sm_text_copy(v->digits, sizeof v->digits, word);
-        v->value = (double)NAN;
-        return SM_OK;
-    }
-    status = read_number(p, i, slots, v, why);
-    if (status == SM_OK && has_unit && !unit_is(c, unit)) {
-        char want[SM_WORD_SIZE + 8];
-        struct sm_text t;
-
-        sm_text_init(&t, want, sizeof want);
-        sm_text_addf(&t, "unit %s", c->written[0] != '\0' ? c->written : sm_unit_name(c->unit));
-        status = expected(p, i, c->unit_at, want, unit, why);
-    }
-    return status;
 }
 
 /* ---- the whole line ---- */
@@ -458,12 +322,12 @@ static enum sm_status read_channels(const struct sm_parser *p, const struct slot
                                     struct sm_reading *r, struct sm_text *why)
 {
     const char *word;
-    const enum sm_flag said = flag_of(p->profile, slots->status, &word);
+    const enum sm_flag said = sm_flag_of_word(p->profile, slots->status, &word);
     bool any = false;
 
     for (size_t i = 0; i < r->n; i++) {
         struct sm_value *v = &r->channel[i];
-        const enum sm_status status = read_channel(p, i, slots, v, why);
+        const enum sm_status status = sm_value_read(p->profile, i, &slots->channel[i], v, why);
 
         if (status != SM_OK)
             return status;
