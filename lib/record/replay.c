@@ -28,7 +28,11 @@ static void show(struct sm_text *t, const json_t *v)
     } else if (json_is_integer(v)) {
         sm_text_addf(t, "%lld", (long long)json_integer_value(v));
     } else if (json_is_real(v)) {
-        sm_text_addn(t, digits, sm_number_write(digits, json_real_value(v)));
+        const size_t n = sm_number_write(digits, json_real_value(v));
+
+        sm_text_addn(t, digits, n);
+        if (strspn(digits, "-0123456789") == n) /* a real that looks like a whole number */
+            sm_text_add(t, ".0");
     } else if (json_is_string(v)) {
         const size_t n = json_string_length(v);
         size_t at = 0, len;
@@ -113,6 +117,19 @@ static bool lists_agree(struct place *p, const json_t *a, const json_t *b)
     return same;
 }
 
+/* A key that one side has here and the other has not. */
+static bool misplaced(struct place *p, const json_t *logged, const json_t *again)
+{
+    struct sm_text t;
+
+    if (logged == NULL || again == NULL)
+        return differ(p, logged, again);
+    sm_text_init(&t, p->why, SM_REASON_SIZE);
+    sm_text_add_safe(&t, p->path.buf, p->path.len);
+    sm_text_add(&t, ": in another place among the keys");
+    return false;
+}
+
 static bool objects_agree(struct place *p, const json_t *a, const json_t *b)
 {
     json_t *ja = (json_t *)(uintptr_t)a, *jb = (json_t *)(uintptr_t)b;
@@ -127,7 +144,7 @@ static bool objects_agree(struct place *p, const json_t *a, const json_t *b)
 
         sm_text_addf(&p->path, "%s%s", len > 0 ? "." : "", key);
         if (ia == NULL || ib == NULL || strcmp(key, json_object_iter_key(ib)) != 0)
-            same = differ(p, va, json_object_get(jb, key));
+            same = misplaced(p, va, ia != NULL ? json_object_get(jb, key) : vb);
         else
             same = agree(p, va, vb, is_difference(key) ? largest_real(a) : 0);
         p->path.len = len;

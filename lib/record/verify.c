@@ -272,7 +272,7 @@ static const char *judge_after(int64_t n, struct line l, bool *closed)
     struct sm_head head;
     struct stamp s;
 
-    if (!sm_head_read(l.s, l.n, &head))
+    if (!sm_head_read(l.s, l.n, &head) || sm_json_span(l.s, l.n) != l.n)
         return "a line behind its last stamp is no entry";
     if (head.n != n)
         return "a line behind its last stamp is out of number";
