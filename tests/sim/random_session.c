@@ -29,6 +29,9 @@ void sm_random_session_init(struct sm_random_session *r, unsigned beakers, uint6
         .longest_settle_s = 400,
         .step_from = 1,
         .step_to = 180,
+        .air_shortest_s = 2,
+        .air_clear = 10,
+        .rinse_clear = 10,
         .rinse_longest = 0.9,
         .rinse_share = 0.7,
         .lift_share = 0.2,
@@ -45,7 +48,7 @@ struct draw {
     struct sm_scenario *sc;
     struct sm_sim_prng p;
     enum sm_status status; /* of the first step that could not be added */
-    double least_s;        /* four readings: what is shorter cannot be seen */
+    double least_s;        /* five readings: what is shorter cannot be seen */
     struct sm_sim_response response;
     double value;              /* of the last beaker */
     struct sm_sim_probe probe; /* where the electrode is after what was added, */
@@ -76,11 +79,18 @@ static double at_least(double s, double least_s)
     return s > least_s ? s : least_s;
 }
 
+/* Where the electrode stands, but for its drift. */
+static double now_mv(const struct draw *d)
+{
+    return sm_sim_probe_signal(&d->probe, d->t_ns) - sm_sim_probe_drift(&d->probe, d->t_ns);
+}
+
 static void add_air(struct draw *d, enum sm_sim_step_kind kind)
 {
     struct sm_sim_step step = { .kind = kind, .celsius = d->sc->celsius, .open = d->sc->open };
 
-    step.span_s = at_least(draw_s(d, 1, 6), d->least_s);
+    const double shortest_s = kind == SM_SIM_STEP_LIFT ? 1 : d->r->air_shortest_s;
+    step.span_s = at_least(draw_s(d, shortest_s, 6), d->least_s);
     add(d, &step);
 }
 
@@ -93,6 +103,9 @@ static void add_rinse(struct draw *d)
 
     step.span_s = draw_s(d, fmin(at_least(2, d->least_s), longest_s), longest_s);
     step.value = round(sm_sim_prng_between(&d->p, -200, 200) * 10) / 10;
+    const double off = step.value - now_mv(d);
+    if (fabs(off) < d->r->rinse_clear)
+        step.value += copysign(d->r->rinse_clear, off) - off;
     add(d, &step);
 }
 
@@ -169,10 +182,8 @@ static void add_beaker(struct draw *d, unsigned number)
     snprintf(in.name, sizeof in.name, "b%u", number);
     in.value = d->value;
     in.celsius = round(sm_sim_prng_between(&d->p, 8, 25) * 10) / 10;
-    const double from =
-        sm_sim_probe_signal(&d->probe, d->t_ns) - sm_sim_probe_drift(&d->probe, d->t_ns);
     const double settle_s =
-        sm_sim_response_settle_s(&d->response, from - d->value, d->r->tolerance);
+        sm_sim_response_settle_s(&d->response, now_mv(d) - d->value, d->r->tolerance);
     const double need_s = 3 * at_least(settle_s, d->r->dwell_s);
     if (sm_sim_prng_chance(&d->p, d->r->short_share)) {
         in.span_s = at_least(draw_s(d, 0.1 * settle_s, 0.9 * settle_s), 2);
@@ -209,7 +220,8 @@ static void draw_settings(struct draw *d)
     sc->dwell_s = r->dwell_s;
     if (sm_sim_prng_chance(&d->p, 0.4))
         sc->drift_per_s = sm_sim_prng_between(&d->p, -r->drift_most, r->drift_most) / 3600;
-    d->least_s = 4 / sc->rate_per_s;
+    d->least_s = 5 / sc->rate_per_s;
+    sc->open.clear = r->air_clear;
 }
 
 static bool sound(const struct sm_random_session *r)
@@ -218,7 +230,9 @@ static bool sound(const struct sm_random_session *r)
            r->rate_to >= r->rate_from && r->noise_from > 0 && r->noise_to >= r->noise_from &&
            r->fast_from_s > 0 && r->fast_to_s >= r->fast_from_s && r->step_from > 0 &&
            r->step_to >= r->step_from && r->step_to < farthest_mv && r->rinse_longest > 0 &&
-           r->rinse_longest < 1 && r->gap_longest_s >= 3 && r->display_step >= 0;
+           r->rinse_longest < 1 && r->air_shortest_s > 0 && r->air_shortest_s <= 6 &&
+           r->air_clear >= 0 && r->rinse_clear >= 0 && r->gap_longest_s >= 3 &&
+           r->display_step >= 0;
 }
 
 enum sm_status sm_random_session_make(const struct sm_random_session *r, struct sm_scenario *sc)

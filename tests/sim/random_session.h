@@ -18,6 +18,11 @@ struct sm_random_session {
     double fast_from_s, fast_to_s; /* log-uniform; the square-root form a hundredth of it */
     double longest_settle_s;       /* of twice the largest step: slower ones are drawn again */
     double step_from, step_to;     /* mV from beaker to beaker, log-uniform */
+    double air_shortest_s;         /* between beakers, 6 s at most; also at least five readings:
+                                    * what is shorter may be taken for stray readings */
+    double air_clear;              /* mV: in air never nearer to the electrode's value, since air
+                                    * that happens to read alike cannot be told from a beaker */
+    double rinse_clear;            /* mV: the same of rinses, against the beaker before */
     double rinse_longest;          /* in dwells, < 1 */
     double rinse_share, lift_share, stray_share, gap_share; /* 0 … 1, of the beakers */
     double gap_longest_s;                                   /* silences last 3 s to this */
@@ -26,7 +31,8 @@ struct sm_random_session {
 };
 
 /* Tolerance 0.6 mV, dwell 22 s, 0.5 to 10 readings/s, noise 0.05 mV to 0.1 mV, step 0.1 mV, all
- * responses, 0.3 to 40 s, settling within 400 s. */
+ * responses, 0.3 to 40 s, settling within 400 s; air from 2 s and 10 mV away, rinses as they come.
+ */
 void sm_random_session_init(struct sm_random_session *r, unsigned beakers, uint64_t seed);
 
 /* Draws it into an initialised sc. The same r gives the same scenario.

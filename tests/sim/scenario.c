@@ -30,7 +30,7 @@ void sm_scenario_init(struct sm_scenario *sc)
         .response = { SM_SIM_RESPONSE_EXPONENTIAL, 1, 0, 0 },
         .celsius = 20,
         .probe_response_s = 3,
-        .open = { SM_SIM_OPEN_WANDER, 300, "" },
+        .open = { SM_SIM_OPEN_WANDER, 300, 0, "" },
         .rinse_unit = SM_UNIT_MV,
         .start_unit = SM_UNIT_MV,
         .tolerance = 0.6,

@@ -73,6 +73,7 @@ enum sm_sim_open_kind { SM_SIM_OPEN_WANDER, SM_SIM_OPEN_RAIL, SM_SIM_OPEN_WORD }
 struct sm_sim_open {
     enum sm_sim_open_kind kind;
     double level; /* WANDER: how wide, a standard deviation; RAIL: the value; signal */
+    double clear; /* WANDER: never nearer than this to where the electrode stands; signal */
     char word[SM_SCENARIO_WORD];
 };
 

@@ -76,12 +76,14 @@ bool sm_sim_read_response(struct sm_sim_words *w, const struct sm_scenario *sc,
 
 bool sm_sim_read_open(struct sm_sim_words *w, const struct sm_scenario *sc, struct sm_sim_open *ret)
 {
-    struct sm_sim_open o = { SM_SIM_OPEN_WANDER, sm_scenario_wide(sc), "" };
+    struct sm_sim_open o = { SM_SIM_OPEN_WANDER, sm_scenario_wide(sc), 0, "" };
     struct sm_sim_shape_text t;
 
     if (sm_sim_words_is(w, "wander")) {
         if (sm_sim_words_left(w))
             sm_sim_read_signal(w, "how wide it wanders", sc, &o.level);
+        if (sm_sim_words_is(w, "clear"))
+            sm_sim_read_signal(w, "how far it stays away", sc, &o.clear);
     } else if (sm_sim_words_is(w, "rail")) {
         o.kind = SM_SIM_OPEN_RAIL;
         sm_sim_read_signal(w, "the rail", sc, &o.level);

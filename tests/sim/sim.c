@@ -173,6 +173,8 @@ static double wander(struct sm_sim *s, int64_t t_ns)
     s->wander =
         keep * s->wander + sqrt(1 - keep * keep) * s->open.level * sm_sim_prng_normal(&s->air);
     s->wander_t_ns = t_ns;
+    if (fabs(s->wander) < s->open.clear)
+        s->wander = copysign(s->open.clear, s->wander);
     return s->wander;
 }
 

@@ -250,6 +250,8 @@ static void a_random_session_keeps_its_promises(void **state)
     assert_int_equal(sm_random_session_make(&r, &sc), SM_OK);
     for (size_t i = 0; i < sc.n_steps; i++) {
         const struct sm_sim_step *s = &sc.step[i];
+        if (s->kind == SM_SIM_STEP_AIR && !(s->span_s >= r.air_shortest_s))
+            fail_msg("step %zu: %g s in air", i, s->span_s);
         if (s->kind == SM_SIM_STEP_RINSE && !(s->span_s < r.dwell_s))
             fail_msg("step %zu: a rinse of %g s is no shorter than the dwell", i, s->span_s);
         if (s->kind != SM_SIM_STEP_IN)
