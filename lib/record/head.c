@@ -20,6 +20,8 @@ static bool pass(struct cursor *c, const char *text, size_t len)
     return true;
 }
 
+#define DIGITS_MOST 18 /* a longer number is damage: 31 years in ns are shorter */
+
 /* A whole number as our writer writes it: no sign, no zero in front. */
 static bool take_number(struct cursor *c, int64_t *ret)
 {
@@ -27,11 +29,9 @@ static bool take_number(struct cursor *c, int64_t *ret)
     int64_t v = 0;
 
     while (c->at < c->n && c->s[c->at] >= '0' && c->s[c->at] <= '9') {
-        const int digit = c->s[c->at] - '0';
-        if (v > (INT64_MAX - digit) / 10)
+        if (c->at - from == DIGITS_MOST)
             return false;
-        v = 10 * v + digit;
-        c->at++;
+        v = 10 * v + (c->s[c->at++] - '0');
     }
     *ret = v;
     return c->at > from && (c->s[from] != '0' || c->at == from + 1);
