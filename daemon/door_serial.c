@@ -7,6 +7,7 @@
 #include <errno.h>
 #include <fcntl.h>
 #include <libserialport.h>
+#include <string.h>
 
 #include "base/text.h"
 
@@ -133,7 +134,7 @@ int sm_door_serial_identity(const struct sm_door *d, const char *device, char *r
             sm_text_addf(&t, "usb %04x:%04x", (unsigned)vendor, (unsigned)product);
         if (serial != NULL) {
             sm_text_add(&t, " serial ");
-            sm_text_add(&t, serial);
+            sm_text_add_safe(&t, serial, strlen(serial)); /* the adapter's own bytes */
         }
     }
     sp_free_port(port);

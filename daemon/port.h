@@ -1,7 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* port.h: one meter's line: opened exclusively, read without waiting, written whole questions only.
  * Two kinds behind it: a serial adapter (libserialport) and a plain descriptor (pseudo-terminals,
- * pipes, gadget ports). Nothing here waits, retries or logs: the meter decides. */
+ * gadget ports). Nothing here waits, retries or logs: the meter decides. */
 #ifndef SM_DAEMON_PORT_H
 #define SM_DAEMON_PORT_H
 #include "core/input.h"
@@ -12,11 +12,16 @@ struct sm_port;
 
 /* Opens the port that the setup names: resolved anew (by-id links), exclusive, set up, read back
  * and compared, flushed. known: identity of the adapter seen before on this meter ("" none):
- * another one is refused unless the setup allows it. ret_link is filled whatever happens: UP with
- * device, identity, settings and (in why) what could not be set as asked; LOST: not there or not
- * working now; REFUSED: in use, no access, another adapter. Its why is a sentence that says what to
- * do. SM_EBUSY   in use SM_EINVAL  another adapter, or a setting that this port cannot have at all
- *   SM_EIO     not there, no access, or a call failed
+ * another one is refused unless the setup allows it.
+ * ret_link is filled whatever happens; its why is a sentence that says what to do.
+ *   UP       with device, identity and settings as read back; why: what could not be set as asked,
+ *            or that the adapter is another one
+ *   LOST     not there, or not working now
+ *   REFUSED  in use, no access, another adapter, no serial line, settings it cannot have
+ * The status:
+ *   SM_EBUSY   in use
+ *   SM_EINVAL  another adapter, or settings that this port cannot have at all
+ *   SM_EIO     not there, no access, no serial line, or a call failed
  *   SM_ENOMEM */
 SM_MUST_CHECK enum sm_status sm_port_open(const struct sm_door *door,
                                           const struct sm_port_setup *setup, const char *known,

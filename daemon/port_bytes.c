@@ -23,6 +23,10 @@ void sm_port_decode(struct sm_port *p, const unsigned char *raw, size_t n,
     for (size_t i = 0; i < n; i++) {
         const unsigned char b = raw[i];
 
+        if (!p->marked) {
+            add(out, b, false);
+            continue;
+        }
         switch (p->mark) {
         case SM_NO_MARK:
             if (b == 0xff)
@@ -33,7 +37,9 @@ void sm_port_decode(struct sm_port *p, const unsigned char *raw, size_t n,
         case SM_MARK_FF:
             p->mark = b == 0 ? SM_MARK_FF_00 : SM_NO_MARK;
             if (b != 0)
-                add(out, b, false); /* FF FF is one FF; anything else stands for itself */
+                add(out, 0xff, false);
+            if (b != 0 && b != 0xff) /* no mark after all: nothing that came is left out */
+                add(out, b, false);
             break;
         case SM_MARK_FF_00:
             p->mark = SM_NO_MARK;
@@ -59,7 +65,8 @@ static enum sm_port_got nothing(struct sm_port *p, char ret_why[SM_LINK_TEXT_SIZ
         return lost(ret_why, "the line could not be looked at: the adapter is gone");
     if ((seen & (POLLHUP | POLLERR | POLLNVAL)) != 0)
         return lost(ret_why, "the adapter was unplugged or the line hung up");
-    if ((seen & POLLIN) != 0 && ++p->idle_reads >= IDLE_READS_MAX)
+    p->idle_reads = (seen & POLLIN) != 0 ? p->idle_reads + 1 : 0;
+    if (p->idle_reads >= IDLE_READS_MAX)
         return lost(ret_why, "the line gives end of file again and again: the adapter is gone");
     return SM_PORT_NOTHING;
 }
@@ -67,7 +74,7 @@ static enum sm_port_got nothing(struct sm_port *p, char ret_why[SM_LINK_TEXT_SIZ
 enum sm_port_got sm_port_read(struct sm_port *p, struct sm_port_bytes *ret_bytes,
                               char ret_why[SM_LINK_TEXT_SIZE])
 {
-    unsigned char raw[SM_BYTES_MAX];
+    unsigned char raw[SM_BYTES_MAX - 1]; /* decoding may make one more of it */
     const ssize_t n = p->door->read(p->door, p->fd, raw, sizeof raw);
     struct sm_text why;
 
