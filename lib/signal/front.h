@@ -35,6 +35,7 @@ struct sm_front {
         double x;
     } last[SM_FRONT_LAST]; /* accepted ones, the newest first */
     unsigned n_last;
+    double steady;     /* noise as it was when the signal was quietest of late, u */
     double usual_dt_s; /* spacing of readings, smoothed */
     int64_t seen_t_ns; /* the latest reading, odd or not */
     bool seen;

@@ -28,12 +28,11 @@ enum sm_where {
 };
 
 struct sm_way {
-    int64_t from_t_ns; /* when it began */
-    bool from_known;   /* false: in the file before */
-    int64_t last_t_ns; /* latest departure or arrival */
-    double direction;  /* of it */
-    unsigned goings;   /* departures, each going counted once */
-    bool transit;      /* an open circuit was in it */
+    int64_t from_t_ns;    /* when it began */
+    bool from_known;      /* false: in the file before */
+    struct sm_going last; /* latest departure or arrival */
+    unsigned goings;      /* departures, each going counted once */
+    bool transit;         /* an open circuit was in it */
     enum sm_transit_how how;
     bool kept;                    /* the stay before (not `now`) may be put back */
     int64_t kept_t_ns;            /* when it was left */

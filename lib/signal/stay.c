@@ -6,7 +6,7 @@
 
 void sm_stay_again(struct sm_stay *s, int64_t t_ns, int64_t bin_ns)
 {
-    s->anchor_t_ns = t_ns;
+    s->anchor_t_ns = s->dwell_t_ns = t_ns;
     s->n = 0;
     sm_bins_begin(&s->bins, t_ns, bin_ns);
     sm_window_begin(&s->window);
@@ -14,9 +14,9 @@ void sm_stay_again(struct sm_stay *s, int64_t t_ns, int64_t bin_ns)
 
 void sm_stay_begin(struct sm_stay *s, int64_t t_ns, int64_t bin_ns)
 {
-    s->moved_t_ns = s->way_from_t_ns = s->stepped_t_ns = t_ns;
+    s->moved_t_ns = s->way_from_t_ns = t_ns;
     s->by = SM_MOVED_START;
-    s->direction = 0;
+    s->going = (struct sm_going){ t_ns, 0, 0 };
     s->way_open = false;
     s->way_how = SM_TRANSIT_DEPARTURES;
     s->lifts = 0;

@@ -9,16 +9,23 @@
 #include "signal/signal.h"
 #include "signal/window.h"
 
+/* A departure as the latest of a way: is the next one a part of it? */
+struct sm_going {
+    int64_t t_ns;
+    double direction; /* -1, 1; 0 = any (an arrival out of the air, or out of nothing) */
+    double before;    /* level before it, u */
+};
+
 struct sm_stay {
     enum sm_mark_by by;
-    int64_t moved_t_ns;  /* when it began, as told */
-    int64_t anchor_t_ns; /* the dwell counts from here; later than moved_t_ns when a slow start went
-                            on */
+    int64_t moved_t_ns;    /* when it began, as told */
+    int64_t anchor_t_ns;   /* its readings begin here; later than moved_t_ns when a slow start went
+                            * on */
+    int64_t dwell_t_ns;    /* the dwell counts from here: the anchor, or the end of a lift */
     int64_t way_from_t_ns; /* by value or transit: when the way that led here began */
     bool way_open;         /* … and an open circuit was in it, seen so: */
     enum sm_transit_how way_how;
-    int64_t stepped_t_ns; /* when the latest departure that led here began */
-    double direction;     /* of it: -1, 1; 0 = any (from an open circuit, from nothing) */
+    struct sm_going going; /* the latest that led here */
     unsigned lifts;
     bool captured;
     bool given_up;      /* the longest wait is over */

@@ -68,7 +68,7 @@ static void tell_not_settled(struct sm_signal *s, const struct sm_stay *stay, in
     struct sm_signal_event *e;
 
     if (stay->captured || stay->given_up ||
-        (!always && to_t_ns - stay->moved_t_ns < s->pace.dwell_ns))
+        (!always && to_t_ns - stay->dwell_t_ns < s->pace.dwell_ns))
         return;
     e = sm_signal_push(s, SM_SIGNAL_NOT_SETTLED);
     e->from_t_ns = stay->moved_t_ns;
@@ -81,12 +81,17 @@ static bool is_transit(const struct sm_way *w)
     return w->transit || w->goings >= 2;
 }
 
+static struct sm_going going(const struct sm_departure *d)
+{
+    return (struct sm_going){ d->t_ns, d->level < d->before ? -1 : 1, d->before };
+}
+
 /* Begins a way at t_ns out of the stay `now`. `d` is NULL where the circuit opened. */
 static void leave(struct sm_signal *s, int64_t t_ns, const struct sm_departure *d)
 {
     struct sm_stay *stay = sm_stay_now(s);
     /* The stay has not lasted the dwell since a way led to it: it was a rinse, the way goes on. */
-    const bool goes_on = !stay->captured && t_ns - stay->anchor_t_ns < s->pace.dwell_ns &&
+    const bool goes_on = !stay->captured && t_ns - stay->dwell_t_ns < s->pace.dwell_ns &&
                          (stay->by == SM_MOVED_VALUE || stay->by == SM_MOVED_TRANSIT);
     const bool worth =
         !stay->captured && stay->n > 0 && t_ns - stay->anchor_t_ns >= s->pace.worth_ns;
@@ -95,14 +100,14 @@ static void leave(struct sm_signal *s, int64_t t_ns, const struct sm_departure *
     memset(w, 0, sizeof *w);
     w->from_t_ns = goes_on ? stay->way_from_t_ns : t_ns;
     w->from_known = true;
-    w->last_t_ns = t_ns;
+    w->last = (struct sm_going){ t_ns, 0, 0 };
     w->goings = d != NULL ? 1 : 0;
     w->transit = goes_on && stay->way_open;
     w->how = stay->way_how;
     if (goes_on)
         w->goings += stay->by == SM_MOVED_VALUE ? 1 : 2;
     if (d != NULL)
-        w->direction = d->level < d->before ? -1 : 1;
+        w->last = going(d);
     if (worth) {
         w->kept = true;
         w->kept_t_ns = t_ns;
@@ -120,13 +125,22 @@ static void leave(struct sm_signal *s, int64_t t_ns, const struct sm_departure *
     s->away.n = 0;
 }
 
-/* One going seen twice (a slow start), or the approach to the place just arrived at. */
-static bool same_going(const struct sm_signal *s, double direction, int64_t last_t_ns,
+/* One going seen twice: a slow start that still speeds up in the same direction, so that the slope
+ * before the second departure is no less than the mean one since the first (half of it: noise).
+ * Where the signal had slowed down in between, there was a place in between. And a departure
+ * straight after an arrival is the approach to the new place. */
+static bool same_going(const struct sm_signal *s, const struct sm_going *last,
                        const struct sm_departure *d)
 {
-    const double dir = d->level < d->before ? -1 : 1;
+    const double since_s = 1e-9 * (double)(d->t_ns - last->t_ns);
+    const double gone = (d->before - last->before) * last->direction;
 
-    return d->t_ns - last_t_ns < s->pace.calm_ns && (direction == 0 || direction == dir);
+    if (d->t_ns - last->t_ns >= s->pace.calm_ns)
+        return false;
+    if (last->direction == 0)
+        return true;
+    return going(d).direction == last->direction && gone > 0 &&
+           d->slope_u_per_s * last->direction * since_s >= gone / 2;
 }
 
 /* Is `level` that of the stay kept, as far as it may have crept since? `reach`: how far the
@@ -144,11 +158,17 @@ static bool is_back(const struct sm_signal *s, double level, double reach, doubl
            fabs(level - w->before) + reach <= alike + fmin(creep, ALIKE_TOLERANCES * tolerance);
 }
 
+/* The old window goes on. But what was left before the dwell was over may have been a rinse, dipped
+ * into twice: then the dwell counts again from the return, or two rinses would make a stay. */
 static void put_back(struct sm_signal *s, int64_t t_ns)
 {
+    struct sm_stay *stay = &s->stay[s->now ^ 1];
+
     tell_transit(s, t_ns, true);
     s->now ^= 1;
-    sm_stay_now(s)->lifts++;
+    stay->lifts++;
+    if (s->way.kept_t_ns - stay->dwell_t_ns < s->pace.dwell_ns)
+        stay->dwell_t_ns = t_ns;
     s->way.kept = false;
     s->where = SM_STAYING;
 }
@@ -167,15 +187,14 @@ void sm_way_tell(struct sm_signal *s, int64_t t_ns)
     struct sm_stay *stay = sm_stay_now(s);
 
     if (s->where != SM_LEAVING || s->open_circuit || stay->n == 0 ||
-        t_ns - w->last_t_ns < s->pace.calm_ns ||
+        t_ns - w->last.t_ns < s->pace.calm_ns ||
         (w->kept && t_ns - w->kept_t_ns <= s->pace.lift_ns))
         return;
     let_go(s, "moved on before it settled", false);
     stay->way_from_t_ns = w->from_t_ns;
     stay->way_open = w->transit;
     stay->way_how = w->how;
-    stay->stepped_t_ns = w->last_t_ns;
-    stay->direction = w->direction;
+    stay->going = w->last;
     if (is_transit(w))
         tell_transit(s, stay->anchor_t_ns, false);
     tell_moved(s, is_transit(w) ? SM_MOVED_TRANSIT : SM_MOVED_VALUE);
@@ -186,9 +205,8 @@ static void depart_staying(struct sm_signal *s, const struct sm_departure *d)
 {
     struct sm_stay *stay = sm_stay_now(s);
 
-    if (!stay->captured && stay->by != SM_MOVED_MARK &&
-        same_going(s, stay->direction, stay->stepped_t_ns, d)) {
-        stay->stepped_t_ns = d->t_ns;
+    if (!stay->captured && stay->by != SM_MOVED_MARK && same_going(s, &stay->going, d)) {
+        stay->going = going(d);
         stay_again(s, d->t_ns);
         return;
     }
@@ -196,8 +214,8 @@ static void depart_staying(struct sm_signal *s, const struct sm_departure *d)
     stay_new(s, d->t_ns);
     if (!s->way.kept && s->way.goings == 1) { /* told at once; a second one makes it a transit */
         stay = sm_stay_now(s);
-        stay->way_from_t_ns = stay->stepped_t_ns = d->t_ns;
-        stay->direction = s->way.direction;
+        stay->way_from_t_ns = d->t_ns;
+        stay->going = s->way.last;
         tell_moved(s, SM_MOVED_VALUE);
     }
 }
@@ -216,10 +234,9 @@ void sm_way_departed(struct sm_signal *s, const struct sm_departure *d)
     } else if (is_back(s, d->level, d->reach, d->alike, d->t_ns)) {
         put_back(s, d->t_ns);
     } else {
-        if (!same_going(s, w->direction, w->last_t_ns, d))
+        if (!same_going(s, &w->last, d))
             w->goings++;
-        w->direction = d->level < d->before ? -1 : 1;
-        w->last_t_ns = d->t_ns;
+        w->last = going(d);
         stay_new(s, d->t_ns);
     }
 }
@@ -262,8 +279,7 @@ void sm_way_arrived(struct sm_signal *s, int64_t t_ns)
     } else if (s->open_circuit ||
                (s->where == SM_LEAVING && !s->way.from_known && sm_stay_now(s)->n == 0)) {
         s->open_circuit = false;
-        s->way.last_t_ns = t_ns;
-        s->way.direction = 0;
+        s->way.last = (struct sm_going){ t_ns, 0, 0 };
         stay_new(s, t_ns);
     }
 }
@@ -291,7 +307,7 @@ void sm_way_mark(struct sm_signal *s, int64_t t_ns)
         tell_not_settled(s, sm_stay_now(s), t_ns, why, false);
     let_go(s, why, false);
     if (s->where == SM_LEAVING && !s->open_circuit && is_transit(&s->way))
-        tell_transit(s, s->way.last_t_ns, false);
+        tell_transit(s, s->way.last.t_ns, false);
     stay_new(s, t_ns);
     tell_moved(s, SM_MOVED_MARK);
     if (s->open_circuit) { /* still in the air: the transit is told when it is over */
