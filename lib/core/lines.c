@@ -61,37 +61,48 @@ static void meter_mark(struct sm_core *c, const struct sm_reading *r)
     (void)!sm_signal_feed(c->signal, &mark);
 }
 
+/* Why a whole line gave no reading although the meter was asked, or because it was not; NULL: it
+ * may be read. *ret_identity: it is the answer to the identity question. */
+static const char *not_ours(struct sm_core *c, const struct sm_line *line, bool *ret_identity)
+{
+    switch (sm_asker_line(&c->asker, c->in.t_ns, line->first_t_ns)) {
+    case SM_ANSWER_IDENTITY:
+        *ret_identity = true;
+        return NULL;
+    case SM_ANSWER_LATE:
+        return "the answer came after its time limit";
+    case SM_ANSWER_UNASKED:
+        return "nothing was asked before it";
+    case SM_ANSWER_STREAM:
+    case SM_ANSWER_READING:
+        break;
+    }
+    return NULL;
+}
+
 void sm_core_line(struct sm_core *c, const struct sm_line *line)
 {
-    const char *why_not = not_whole(line->kind);
+    const char *why_not = not_whole(line->kind), *not_taken = NULL;
+    const bool asks = c->setup->profile->ask.n > 0;
     struct sm_reading r;
     char why[SM_REASON_SIZE];
-    bool mark = false;
+    bool mark = false, is_identity = false;
 
-    if (line->kind != SM_LINE_CUT && line->kind != SM_LINE_FIRST) {
-        switch (sm_asker_line(&c->asker, c->in.t_ns, line->first_t_ns)) {
-        case SM_ANSWER_IDENTITY:
-            identity(c, line);
-            return;
-        case SM_ANSWER_LATE:
-            unread(c, line, "the answer came after its time limit");
-            return;
-        case SM_ANSWER_UNASKED:
-            unread(c, line, "nothing was asked before it");
-            return;
-        case SM_ANSWER_STREAM:
-        case SM_ANSWER_READING:
-            break;
-        }
-    }
     if (why_not == NULL &&
         sm_parser_read(c->parser, line->t_ns, line->bytes, line->n, &r, &mark, why) != SM_OK)
         why_not = why;
-    if (why_not != NULL) {
-        unread(c, line, why_not);
+    /* A meter that sends by itself may send a reading before it answers who it is. */
+    if (line->kind != SM_LINE_CUT && line->kind != SM_LINE_FIRST && (asks || why_not != NULL))
+        not_taken = not_ours(c, line, &is_identity);
+    if (is_identity && line->kind == SM_LINE_WHOLE) {
+        identity(c, line);
         return;
     }
-    if (mark)
+    if (not_taken != NULL)
+        why_not = not_taken;
+    if (why_not != NULL)
+        unread(c, line, why_not);
+    else if (mark)
         meter_mark(c, &r);
     else
         sm_core_reading(c, &r);

@@ -338,6 +338,66 @@ static void a_flood_of_rubbish_is_told_ten_times_a_minute_and_counted(void **sta
     assert_int_equal(day_count(&day, SM_EVENT_UNREAD), 11);
 }
 
+static void sent(struct day *d)
+{
+    struct sm_input in = { .kind = SM_INPUT_SENT };
+
+    in.sent_of = day_last(d, SM_EVENT_ASK)->n;
+    day_feed(d, &in);
+}
+
+static void question(struct sm_question *q, const char *text)
+{
+    sm_text_copy(q->text, sizeof q->text, text);
+    q->n = strlen(text);
+    q->every_ns = SM_NS_PER_S;
+    q->within_ns = 600 * SM_NS_PER_MS;
+}
+
+static void an_asked_meter_is_asked_at_its_time_and_a_late_answer_is_no_reading(void **state)
+{
+    (void)state;
+    question(&day.profile.ask, "R\r");
+    question(&day.profile.identity, "I\r");
+    day_start(&day, false);
+    day_nothing(&day, 0.1); /* who are you? */
+    assert_int_equal(day_count(&day, SM_EVENT_ASK), 1);
+    sent(&day);
+    day_nothing(&day, 0.1);
+    day_bytes(&day, "bench meter, invented\r\n");
+    day_nothing(&day, 0.1);
+    assert_int_equal(day_count(&day, SM_EVENT_ASK), 2);
+    sent(&day);
+    day_nothing(&day, 0.2);
+    day_bytes(&day, "12.50 20.0\r\n");
+    assert_int_equal(day_count(&day, SM_EVENT_UNREAD), 0);
+    day_nothing(&day, 1.0);
+    assert_int_equal(day_count(&day, SM_EVENT_ASK), 3);
+    sent(&day);
+    day_nothing(&day, 0.9); /* its limit has passed: nothing is asked, the answer may still come */
+    assert_int_equal(day_count(&day, SM_EVENT_ASK), 3);
+    day_bytes(&day, "99.99 20.0\r\n");
+    assert_int_equal(day_count(&day, SM_EVENT_UNREAD), 1);
+    day_nothing(&day, 1.0);
+    assert_int_equal(day_count(&day, SM_EVENT_ASK), 4);
+    day_act(&day, SM_ACT_NOTE, "anything, to see what is carried");
+    assert_string_equal(day.carried.meter.identity, "bench meter, invented");
+}
+
+static void a_streaming_meter_may_send_a_reading_before_it_says_who_it_is(void **state)
+{
+    (void)state;
+    question(&day.profile.identity, "I\r");
+    day_start(&day, false);
+    day_nothing(&day, 0.1);
+    sent(&day);
+    day_nothing(&day, 0.1);
+    day_bytes(&day, "12.50 20.0\r\nbench meter, invented\r\n12.51 20.0\r\n");
+    assert_int_equal(day_count(&day, SM_EVENT_UNREAD), 0);
+    day_act(&day, SM_ACT_NOTE, "anything, to see what is carried");
+    assert_string_equal(day.carried.meter.identity, "bench meter, invented");
+}
+
 int main(void)
 {
 #define TEST(name) cmocka_unit_test_setup_teardown(name, begin, end)
@@ -361,6 +421,8 @@ int main(void)
         TEST(a_sheet_with_an_expired_lot_is_refused),
         TEST(rubbish_is_never_a_reading),
         TEST(a_flood_of_rubbish_is_told_ten_times_a_minute_and_counted),
+        TEST(an_asked_meter_is_asked_at_its_time_and_a_late_answer_is_no_reading),
+        TEST(a_streaming_meter_may_send_a_reading_before_it_says_who_it_is),
     };
 #undef TEST
     return cmocka_run_group_tests(tests, NULL, NULL);
