@@ -372,12 +372,14 @@ enum sm_status sm_verify_chain(const struct sm_verify *before, const struct sm_v
     else if (after->ordinal > before->ordinal + 2)
         sm_text_addf(&t, "ordinals %" PRId64 " to %" PRId64 " are missing", before->ordinal + 1,
                      after->ordinal - 1);
+    else if (!after->good && after->stamps == 0)
+        return SM_OK; /* its `open` is damaged, and that is said elsewhere */
     else if (!after->previous.has)
         sm_text_addf(&t, "ordinal %" PRId64 " does not name the file before it", after->ordinal);
     else if (after->previous.ordinal != before->ordinal)
         sm_text_addf(&t, "ordinal %" PRId64 " follows %" PRId64 ", it says", after->ordinal,
                      after->previous.ordinal);
-    else if (strcmp(after->previous.stamp, before->last_stamp) != 0)
+    else if (before->good && strcmp(after->previous.stamp, before->last_stamp) != 0)
         sm_text_addf(&t,
                      "ordinal %" PRId64 " names another last stamp of ordinal %" PRId64
                      " than that file has",
