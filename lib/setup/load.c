@@ -4,11 +4,11 @@
 #include <stdlib.h>
 #include <string.h>
 
+#include "bench/fits.h"
 #include "setup/parts.h"
 
-#define SOCKET_PATH_MOST                                                                           \
-    107                     /* bytes of a Unix socket's path (Linux, unix(7): 108 with the NUL)    \
-                             */
+/* Bytes of a Unix socket's path: 108 with the NUL (Linux, unix(7)). */
+#define SOCKET_PATH_MOST 107
 #define METHOD_NAMES_MAX 64 /* listed before they are read */
 
 /* FOLDER-OF-SETUP/sub/name.yaml */

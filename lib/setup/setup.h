@@ -87,10 +87,4 @@ SM_MUST_CHECK enum sm_status sm_profile_load(const char *name, const char *text,
 /* One method alone (`stillmark-replay --rules METHOD.yaml`). */
 SM_MUST_CHECK enum sm_status sm_method_load(const char *name, const char *text, size_t n,
                                             struct sm_method *ret_method, struct sm_blames *blames);
-
-/* A meter read by this profile can be used with this method: channels and units agree.
- *   SM_EINVAL  ret_why */
-SM_MUST_CHECK enum sm_status sm_method_fits(const struct sm_method *method,
-                                            const struct sm_profile *profile,
-                                            char ret_why[SM_REASON_SIZE]);
 #endif
