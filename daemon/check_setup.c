@@ -5,9 +5,11 @@
 #include <stdlib.h>
 
 #include "base/number.h"
+#include "reading/parse.h"
 #include "source_disk.h"
 
 #define BLAMES_SHOWN 200
+#define STEPS_LEAST 3 /* display steps in a tolerance: a rule of the bench, our judgement */
 
 void sm_print_blames(const struct sm_blames *b, FILE *err)
 {
@@ -110,6 +112,44 @@ void sm_describe_meter(const struct sm_setup *s, size_t meter, struct sm_text *t
     sm_text_add_safe(t, line, raw.len);
 }
 
+/* The display step of a channel in the profile's example; 0: unknown. */
+static double example_step(const struct sm_profile *p, int channel)
+{
+    struct sm_parser *parser = NULL;
+    char why[SM_REASON_SIZE];
+    struct sm_reading r;
+    double step = 0;
+    bool mark;
+
+    if (channel < 0 || sm_parser_create(p, &parser, why) != SM_OK)
+        return 0;
+    if (sm_parser_read(parser, 0, p->example.line, p->example.n, &r, &mark, why) == SM_OK &&
+        r.channel[channel].present)
+        step = r.channel[channel].step;
+    sm_parser_destroy(parser);
+    return step;
+}
+
+void sm_warn_meter(const struct sm_setup *s, size_t meter, struct sm_text *t)
+{
+    static const char *const classes[] = { "standards", "checks", "samples" };
+    const struct sm_core_setup *c = &s->meter[meter].core;
+    const struct sm_method *m = &s->method[c->own_method];
+    const double step = example_step(c->profile, sm_profile_channel(c->profile, m->signal));
+
+    for (int i = 0; i < SM_CLASS_COUNT; i++) {
+        const char *unit = sm_unit_name(m->signal_unit);
+
+        if (!(m->rule.tolerance[i] < STEPS_LEAST * step))
+            continue;
+        sm_text_addf(
+            t,
+            "%s: warning: the tolerance for %s is %.3g %s, less than three display steps of "
+            "%.3g %s: hardly anything will settle\n",
+            c->meter, classes[i], m->rule.tolerance[i], unit, step, unit);
+    }
+}
+
 int sm_check_setup(const char *file)
 {
     struct sm_setup *s = NULL;
@@ -124,6 +164,9 @@ int sm_check_setup(const char *file)
         sm_text_init(&t, line, sizeof line);
         sm_describe_meter(s, i, &t);
         printf("%s\n", line);
+        sm_text_init(&t, line, sizeof line);
+        sm_warn_meter(s, i, &t);
+        fputs(line, stdout);
     }
     sm_setup_destroy(s);
     if (fflush(stdout) != 0 || ferror(stdout)) {

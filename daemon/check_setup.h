@@ -18,6 +18,9 @@ void sm_print_blames(const struct sm_blames *b, FILE *err);
 /* One line per meter on standard output, what was understood; or all that is wrong on standard
  * error. Exit status 0 or 2. */
 int sm_check_setup(const char *file);
+/* Sentences on what is possible but doubtful, a line each, into t: a tolerance under three display
+ * steps as the profile's example implies them. */
+void sm_warn_meter(const struct sm_setup *s, size_t meter, struct sm_text *t);
 /* What was understood of one meter, in plain words, safe for a terminal. */
 void sm_describe_meter(const struct sm_setup *s, size_t meter, struct sm_text *t);
 #endif

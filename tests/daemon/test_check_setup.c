@@ -173,6 +173,26 @@ static void a_meter_is_described_in_plain_words(void **state)
     sm_setup_destroy(s);
 }
 
+static void a_tolerance_under_three_display_steps_is_warned_of(void **state)
+{
+    struct sm_setup *s =
+        shipped("stillmark.yaml"); /* its profile's example shows steps of 0.1 mV */
+    struct sm_rule *rule = &s->method[s->meter[0].core.own_method].rule;
+    char line[4096];
+    struct sm_text t;
+
+    (void)state;
+    sm_text_init(&t, line, sizeof line);
+    sm_warn_meter(s, 0, &t);
+    assert_string_equal(line, "");
+    rule->tolerance[SM_CLASS_CHECK] = 0.299;
+    sm_warn_meter(s, 0, &t);
+    assert_string_equal(line,
+                        "bench-2: warning: the tolerance for checks is 0.299 mV, less than three "
+                        "display steps of 0.1 mV: hardly anything will settle\n");
+    sm_setup_destroy(s);
+}
+
 int main(void)
 {
     const struct CMUnitTest tests[] = {
@@ -182,6 +202,7 @@ int main(void)
         cmocka_unit_test(every_shipped_sheet_is_sound),
         cmocka_unit_test(the_demonstrations_method_says_that_it_is_shortened),
         cmocka_unit_test(a_meter_is_described_in_plain_words),
+        cmocka_unit_test(a_tolerance_under_three_display_steps_is_warned_of),
     };
 
     return cmocka_run_group_tests(tests, NULL, NULL);
