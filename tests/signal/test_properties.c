@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* What must hold whatever the signal does: many made-up sessions at two paces, a bench of dwell 22 s and
- * a demonstration of dwell 3 s. Seeds are small numbers from 0; a failure prints its own. */
+/* What must hold whatever the signal does: many made-up sessions at two paces, a bench of dwell 22
+ * s and a demonstration of dwell 3 s. Seeds are small numbers from 0; a failure prints its own. */
 #include "signal/made.h"
 
 enum kind { BEAKER, RINSE, AIR };
@@ -95,7 +95,8 @@ static void session(struct bench *b, const struct pace *p)
         beaker(b, p, word);
         part(b, AIR, 0, made_between(b, p->air_from, p->air_to), word);
         for (int r = 0; r < rinses; r++) {
-            part(b, RINSE, water + made_normal(b), made_between(b, p->rinse_from, p->rinse_to), word);
+            part(b, RINSE, water + made_normal(b), made_between(b, p->rinse_from, p->rinse_to),
+                 word);
             part(b, AIR, 0, made_between(b, p->air_from, p->air_to), word);
         }
     }
@@ -262,8 +263,7 @@ static void another_zero_scale_or_start_of_time_gives_the_same_decisions(void **
             for (size_t c = 0; c < COUNT(cases); c++) {
                 run_changed(&paces[p], seed, cases[c].add, cases[c].times, cases[c].shift_ns,
                             &other_tape);
-                compare_tapes(cases[c].what, seed, cases[c].add, cases[c].times,
-                              cases[c].shift_ns);
+                compare_tapes(cases[c].what, seed, cases[c].add, cases[c].times, cases[c].shift_ns);
             }
         }
     }
@@ -381,10 +381,8 @@ static void a_session_cut_between_immersions_gives_the_same_captures(void **stat
             assert_int_equal(tape_count(&tape, SM_SIGNAL_MOVED),
                              tape_count(&other_tape, SM_SIGNAL_MOVED));
             for (size_t i = 0; i < tape_count(&tape, SM_SIGNAL_SETTLED); i++)
-                check_close("value",
-                            tape_get(&other_tape, SM_SIGNAL_SETTLED, i)->settled.value,
-                            tape_get(&tape, SM_SIGNAL_SETTLED, i)->settled.value,
-                            TOLERANCE / 10);
+                check_close("value", tape_get(&other_tape, SM_SIGNAL_SETTLED, i)->settled.value,
+                            tape_get(&tape, SM_SIGNAL_SETTLED, i)->settled.value, TOLERANCE / 10);
         }
     }
 }

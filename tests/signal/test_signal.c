@@ -252,7 +252,8 @@ static void before_a_capture_a_lift_that_comes_back_alike_is_put_back(void **sta
         assert_true(e->returned);
         e = tape_get(&tape, SM_SIGNAL_SETTLED, 0);
         assert_int_equal(e->settled.lifts, 1);
-        /* it was left before the dwell was over and may have been a rinse: the dwell counts again */
+        /* it was left before the dwell was over and may have been a rinse: the dwell counts again
+         */
         check_ns("settled", e->t_ns, 18 + 22);
         check_ns("since moved", e->settled.since_moved_ns, 18 + 22 - 1);
         finish(&b, cases[i].name, cases[i].want);
