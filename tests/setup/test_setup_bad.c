@@ -188,6 +188,17 @@ static void a_bad_meter_file_is_blamed(void **state)
         { METER, "profile: mv", "profile: mw",
           "conf/meters/m1.yaml:4:10: profile: cannot read conf/profiles/mw.yaml: the log carries "
           "no file of this name" },
+        { METER, "silence: 10 s", "silence: 999 ms",
+          "conf/meters/m1.yaml:3:10: silence: expected a time between 1 s and 1 h, got \"999 "
+          "ms\"" },
+        { METER, "silence: 10 s", "silence: 61 min",
+          "conf/meters/m1.yaml:3:10: silence: expected a time between 1 s and 1 h, got \"61 "
+          "min\"" },
+        { METER, "profile: mv", "profile: .mv",
+          "conf/meters/m1.yaml:4:10: profile: expected a profile's name (a file's name without "
+          "folder and .yaml), got \".mv\"" },
+        { METER, "port: /dev/serial/by-id/usb-1", "port: /dev/\xff",
+          "conf/meters/m1.yaml:1:12: expected text in UTF-8, got the byte 0xFF" },
         { METER, "profile: mv", "profile: ../../x",
           "conf/meters/m1.yaml:4:10: profile: expected a profile's name (a file's name without "
           "folder and .yaml), got \"../../x\"" },
@@ -360,6 +371,11 @@ static void a_bad_method_is_blamed(void **state)
         { PH, "levels: 5", "r-squared: 0.99 %",
           "conf/methods/ph.yaml:10:12: r-squared: expected a number between 0 and 1, got \"0.99 "
           "%\"" },
+        { PH, "levels: 5", "r-squared: -0.1",
+          "conf/methods/ph.yaml:10:12: r-squared: expected a number between 0 and 1, got "
+          "\"-0.1\"" },
+        { PH, "levels: 5", "r-squared: 1.1",
+          "conf/methods/ph.yaml:10:12: r-squared: expected a number between 0 and 1, got \"1.1\"" },
         { PH, "1.2 mV", "1.2 pH",
           "conf/methods/ph.yaml:12:14: residual-sd: expected a potential between 0.001 mV and 2000 "
           "mV, got \"1.2 pH\"" },

@@ -242,6 +242,30 @@ static void a_sheet_is_read_against_the_setup(void **state)
     bench_end(b);
 }
 
+static void what_two_meters_or_two_lists_share_is_read_and_logged_once(void **state)
+{
+    static const char m2[] = "port: /dev/p2\nprofile: mv\nmethod: ph\nsensor: el-2\n";
+    static const char more[] = "table: tables/t.csv\n"
+                               "standards: [ { name: D4, column: phthalate, lot: G-1 } ]\n";
+    struct bench *b = bench_begin(SETUP, "meters: [ m1 ]\nstandards: [ buffers ]",
+                                  "meters: [ m1, m2 ]\nstandards: [ buffers, more ]");
+    struct sm_setup *s;
+
+    (void)state;
+    assert_int_equal(sm_logged_add(&b->files, "conf/meters/m2.yaml", m2, strlen(m2)), SM_OK);
+    assert_int_equal(sm_logged_add(&b->files, "conf/standards/more.yaml", more, strlen(more)),
+                     SM_OK);
+    s = load(b);
+    assert_int_equal(s->n_meters, 2);
+    assert_int_equal(s->n_profiles, 1);
+    assert_ptr_equal(s->meter[0].core.profile, s->meter[1].core.profile);
+    assert_int_equal(s->standards.n, 5);
+    assert_int_equal(s->standards.list[4].table_column, 0);
+    assert_int_equal(s->n_files, COUNT(good_files) + 2);
+    sm_setup_destroy(s);
+    bench_end(b);
+}
+
 /* ---- memory and the source failing ---- */
 
 static enum sm_status fail_get(void *ctx, const char *name, size_t limit, char **ret_text,
@@ -299,6 +323,7 @@ int main(void)
         cmocka_unit_test(the_files_for_the_log_come_in_a_fixed_order),
         cmocka_unit_test(the_files_kept_for_the_log_give_the_same_setup_again),
         cmocka_unit_test(a_sheet_is_read_against_the_setup),
+        cmocka_unit_test(what_two_meters_or_two_lists_share_is_read_and_logged_once),
         cmocka_unit_test(a_source_that_fails_is_said),
     };
 
