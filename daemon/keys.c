@@ -31,7 +31,8 @@ enum sm_status sm_make_folder(const struct sm_door *door, const char *path, mode
         if (r == -ENOENT)
             r = door->mkdir(door, part, mode);
         if (r < 0 && r != -EEXIST) {
-            snprintf(ret_why, 512, "%.300s: the folder cannot be made: %s", part, sm_door_text(r));
+            snprintf(ret_why, 512, "%.300s: the folder cannot be reached or made: %s", part,
+                     sm_door_text(r));
             return SM_EIO;
         }
     }

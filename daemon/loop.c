@@ -120,12 +120,13 @@ static void open_hub(struct sm_loop *l)
 
 static void end_if_stopped(struct sm_loop *l)
 {
+    static const struct timeval flush = { 0, 50000 };
     bool all = true;
 
     for (size_t i = 0; i < l->n; i++)
         all = all && sm_meter_stopped(l->meter[i]);
     if (all) {
-        event_base_loopbreak(l->base);
+        event_base_loopexit(l->base, &flush); /* what was just told still goes out */
     } else if (l->now.boot_ns - l->stopping_boot_ns > STOP_NS) {
         sm_say(NULL, "the disk takes nothing: not every log could be closed");
         _Exit(1); /* a writer hangs in the kernel: joining it would hang us too */

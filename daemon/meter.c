@@ -275,6 +275,11 @@ void sm_meter_stop(struct sm_meter *m, const struct sm_now *now)
     }
 }
 
+bool sm_meter_idle(const struct sm_meter *m)
+{
+    return m->log != LOG_RECOVERING && m->under_way == NULL;
+}
+
 bool sm_meter_stopped(const struct sm_meter *m)
 {
     return m->log == LOG_CLOSED;

@@ -90,6 +90,9 @@ void sm_meter_disk(const struct sm_meter *m, struct sm_meter_disk *ret_disk);
 void sm_meter_shown(const struct sm_meter *m, void (*each)(void *arg, const char *line, size_t n),
                     void *arg);
 
+/* The writer has done all it was given. */
+bool sm_meter_idle(const struct sm_meter *m);
+
 /* Closes the file (close, signed stamp) and the port. */
 void sm_meter_stop(struct sm_meter *m, const struct sm_now *now);
 /* All that can be written is. */

@@ -150,7 +150,7 @@ static void note_missed(const struct sm_meter *m, const struct sm_now *now,
         sm_utc_write(from, m->missed.from_utc_us);
         sm_utc_write(to, now->utc_us);
         sm_text_addf(notes, "from %s to %s nothing was logged (%s): %llu bytes of the meter", from,
-                     to, m->missed.why, (unsigned long long)m->missed.bytes);
+                     to, m->missed.first, (unsigned long long)m->missed.bytes);
     } else if (b->has_state && !b->state.closed) {
         sm_text_add(notes, "the program ended without closing the file before");
     }

@@ -68,7 +68,7 @@ struct sm_meter {
         bool is;
         int64_t from_utc_us;
         uint64_t bytes;
-        char why[SM_WHY_SIZE];
+        char first[SM_WHY_SIZE], why[SM_WHY_SIZE]; /* what began it; what it is now */
     } missed;
     int64_t log_retry_ns;
 

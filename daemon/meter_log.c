@@ -221,8 +221,10 @@ void sm_meter_fail(struct sm_meter *m, const struct sm_now *now, const char *why
     char told[SM_WHY_SIZE];
 
     sm_text_copy(told, sizeof told, why); /* may be m->trouble */
-    if (!m->missed.is)
+    if (!m->missed.is) {
         m->missed.from_utc_us = now->utc_us;
+        sm_text_copy(m->missed.first, sizeof m->missed.first, told);
+    }
     m->missed.is = true;
     m->missed.bytes += unsure_bytes(m);
     sm_text_copy(m->missed.why, sizeof m->missed.why, told);
