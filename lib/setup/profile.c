@@ -369,8 +369,11 @@ static void try_it(const struct sm_reader *r, const struct sm_node *root, struct
     struct sm_parser *parser = NULL;
     const struct sm_node *place = sm_key(root, "pattern");
 
-    if (sm_parser_create(p, &parser, why) != SM_OK) {
-        sm_blame(r, place != NULL ? place : sm_key(root, "channels"), "%s", why);
+    const enum sm_status st = sm_parser_create(p, &parser, why);
+
+    if (st != SM_OK) {
+        sm_blame(r, place != NULL ? place : sm_key(root, "channels"), "%s",
+                 st == SM_EINVAL ? why : sm_status_text(st));
         return;
     }
     if (sm_parser_check_example(parser, why) != SM_OK)
