@@ -21,6 +21,7 @@ struct run {
     struct sm_setup *setup;
     struct sm_sheet *sheet; /* as parsed last */
     bool has_sheet;         /* a sheet was in force at the file's head */
+    const struct sm_core_setup *mine; /* the meter's */
     struct sm_core *core;
     struct sm_carried *carried; /* of the `open`, then the newest */
     char *made;                 /* [SM_ENTRY_MAX] an entry made now */
@@ -216,6 +217,7 @@ static enum sm_status start(struct run *r)
         if (strcmp(r->setup->meter[i].core.meter, r->told->meter) == 0)
             mine = &r->setup->meter[i].core;
     }
+    r->mine = mine;
     if (mine == NULL)
         return fail(r, "the setup in the log does not know the meter");
     if (r->has_sheet) {
@@ -300,6 +302,8 @@ static enum sm_status on_input(struct run *r)
     if (sm_core_feed(r->core, in) != SM_OK)
         return fail(r, "the input cannot be fed: the events before it took other numbers");
     while (sm_core_next(r->core, &e)) {
+        if (r->ask->event != NULL)
+            r->ask->event(r->ask->event_arg, e, r->mine);
         if (sm_event_class(e->kind) == SM_LIVE)
             continue;
         compare(r, e);

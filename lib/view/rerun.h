@@ -20,6 +20,9 @@ struct sm_rerun_ask {
     void (*tell)(void *arg, const char *line);
     void *arg;
     size_t most_told;
+    /* Told of every event that comes out, the live ones too; lent during the call. NULL: not. */
+    void (*event)(void *arg, const struct sm_event *e, const struct sm_core_setup *setup);
+    void *event_arg;
 };
 
 struct sm_rerun_told {
