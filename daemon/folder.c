@@ -89,7 +89,7 @@ int64_t sm_file_ordinal(const char *name)
     const size_t n = strlen(name);
     int64_t ordinal;
 
-    if (digits < 6 || digits > 18 || name[digits] != '_' || n < digits + 7 ||
+    if (digits < 6 || digits > 18 || name[digits] != '_' || n < digits + 8 ||
         strcmp(name + n - 6, ".jsonl") != 0 || strchr(name, '/') != NULL ||
         sm_integer_parse(name, digits, &ordinal) != SM_OK)
         return -1;
