@@ -84,7 +84,7 @@ static enum sm_status set_up(struct sm_port *p, const struct sm_port_setup *setu
             return s;
     }
     if (!sm_port_is_terminal_pair(link->device))
-        (void)d->ioctl(d, p->fd, TIOCEXCL, NULL); /* the lock holds where this is not known */
+        p->exclusive = d->ioctl(d, p->fd, TIOCEXCL, NULL) >= 0; /* else the lock alone holds it */
     r = sm_line_settings(p, setup, link);
     if (r < 0)
         return sm_port_say_failed(d, link, r, "does not take its settings");
@@ -128,6 +128,8 @@ void sm_port_close(struct sm_port *p)
 {
     if (p == NULL)
         return;
+    if (p->exclusive) /* would stay while anybody else has it open */
+        (void)p->door->ioctl(p->door, p->fd, TIOCNXCL, NULL);
     if (p->serial != NULL)
         (void)p->door->serial_close(p->door, p->serial);
     if (p->lock_fd >= 0)

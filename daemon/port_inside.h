@@ -12,6 +12,7 @@ struct sm_port {
     struct sp_port *serial; /* NULL: plain */
     int fd;                 /* read and written */
     int lock_fd;            /* holds the lock; the same as fd where plain */
+    bool exclusive;         /* TIOCEXCL is on */
     bool marked;            /* the line discipline marks hurt bytes; else what comes is as it is */
     enum sm_mark_state mark;
     unsigned idle_reads; /* in a row, that gave nothing although the line seemed readable */

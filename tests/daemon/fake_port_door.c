@@ -224,7 +224,7 @@ static int fake_ioctl(const struct sm_door *d, int fd, unsigned long request, vo
         *(int *)arg = dev->exclusive;
         return 0;
     }
-    if (request == TIOCEXCL)
+    if (request == TIOCEXCL || request == TIOCNXCL)
         return 0;
     if (!dev->has_lines)
         return -ENOTTY;
