@@ -194,8 +194,9 @@ static bool on_object(const struct watch *w, struct watched *m, const json_t *o,
     say_entry(w, m, o);
     if (!turns(o) || m->asked)
         return true;
-    m->asked = true;
-    return ask(m, "status", false, 0, why);
+    /* where it cannot be asked, what is still to be read says why */
+    m->asked = ask(m, "status", false, 0, why);
+    return true;
 }
 
 /* Everything that is here of one meter. */
