@@ -169,7 +169,7 @@ static void on_line(void *ctx, struct sm_meter *m, const char *line, size_t n)
 {
     struct rig *r = ctx;
 
-    (void)m;
+    sm_hub_line(r->hub, m, line, n);
     assert_int_equal(line[n - 1], '\n');
     keep(&r->told, &r->told_n, line, n);
 }
@@ -178,8 +178,7 @@ static void on_live(void *ctx, struct sm_meter *m, const char *kind, const char 
 {
     struct rig *r = ctx;
 
-    (void)m;
-    (void)kind;
+    sm_hub_live(r->hub, m, kind, line, n);
     keep(&r->live, &r->live_n, line, n);
 }
 
@@ -187,7 +186,7 @@ static void on_answer(void *ctx, struct sm_meter *m, int64_t act, const char *li
 {
     struct rig *r = ctx;
 
-    (void)m;
+    sm_hub_answer(r->hub, m, act, line, n);
     r->answered = act;
     snprintf(r->answer, sizeof r->answer, "%.*s", (int)n, line);
 }
@@ -196,7 +195,7 @@ static void on_lost(void *ctx, struct sm_meter *m, const char *why)
 {
     struct rig *r = ctx;
 
-    (void)m;
+    sm_hub_lost(r->hub, m, why);
     r->lost++;
     snprintf(r->lost_why, sizeof r->lost_why, "%s", why);
 }

@@ -7,6 +7,7 @@
 
 #include "base/time.h"
 #include "door_fail.h"
+#include "hub.h"
 #include "meter.h"
 #include "record/chain.h"
 
@@ -18,6 +19,7 @@ struct rig {
     struct sm_signer *signer;
     struct sm_door_fail door;
     struct sm_meter *meter;
+    struct sm_hub *hub; /* told as well; NULL none */
     struct sm_now now;
     int master;  /* the meter's end of the line; -1: unplugged */
     int watched; /* what is to be watched; -1 none */
