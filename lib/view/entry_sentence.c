@@ -210,15 +210,18 @@ static void moved(const json_t *e, struct sm_text *t)
     const char *by = words(e, "by");
 
     if (strcmp(by, "value") == 0)
-        sm_text_add(t, "The value changed");
+        sm_text_add(t, "Not moved, but the value changed");
     else if (strcmp(by, "start") == 0)
         sm_text_add(t, "Readings begin");
     else
         sm_text_add(t, "The probe was moved");
-    if (has(e, "name"))
-        sm_text_add(t, ": now in ");
+    if (!has(e, "name")) {
+        add_after(t, ": ", e, "why");
+        return;
+    }
+    add_after(t, " (", e, "why");
+    sm_text_add(t, has(e, "why") ? "): now in " : ": now in ");
     (void)sm_item_sentence(e, t);
-    add_after(t, ": ", e, "why");
 }
 
 static void not_settled(const json_t *e, struct sm_text *t)

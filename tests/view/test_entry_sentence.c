@@ -81,8 +81,11 @@ static void each_kind_is_said_in_a_sentence(void **state)
           "Refused: not possible yet" },
         { "{\"k\":\"moved\",\"by\":\"mark\",\"name\":\"B4\",\"kind\":\"standard\"}",
           "The probe was moved: now in standard B4" },
+        { "{\"k\":\"moved\",\"by\":\"transit\",\"name\":\"final\",\"kind\":\"sample\",\"why\":"
+          "\"air\"}",
+          "The probe was moved (air): now in sample final" },
         { "{\"k\":\"moved\",\"by\":\"value\",\"why\":\"same beaker disturbed?\"}",
-          "The value changed: same beaker disturbed?" },
+          "Not moved, but the value changed: same beaker disturbed?" },
         { "{\"k\":\"not-settled\",\"name\":\"final\",\"kind\":\"sample\",\"why\":\"15 min are "
           "over\"}",
           "Not settled, no value taken: sample final: 15 min are over" },
