@@ -45,6 +45,16 @@ static void add(struct sm_text *t, const json_t *o, const char *key)
         sm_text_add_safe(t, json_string_value(v), json_string_length(v));
 }
 
+/* With a capital letter first. */
+static void add_sentence(struct sm_text *t, const json_t *o, const char *key)
+{
+    const size_t at = t->len;
+
+    add(t, o, key);
+    if (t->buf[at] >= 'a' && t->buf[at] <= 'z')
+        t->buf[at] = (char)(t->buf[at] - 'a' + 'A');
+}
+
 /* "before TEXT", where there is a text. */
 static void add_after(struct sm_text *t, const char *before, const json_t *o, const char *key)
 {
@@ -209,8 +219,12 @@ static void moved(const json_t *e, struct sm_text *t)
 {
     const char *by = words(e, "by");
 
+    if (strcmp(by, "value") == 0 && has(e, "why")) {
+        add_sentence(t, e, "why"); /* it says that the value changed */
+        return;
+    }
     if (strcmp(by, "value") == 0)
-        sm_text_add(t, "Not moved, but the value changed");
+        sm_text_add(t, "The value changed");
     else if (strcmp(by, "start") == 0)
         sm_text_add(t, "Readings begin");
     else

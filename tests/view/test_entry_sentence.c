@@ -84,8 +84,9 @@ static void each_kind_is_said_in_a_sentence(void **state)
         { "{\"k\":\"moved\",\"by\":\"transit\",\"name\":\"final\",\"kind\":\"sample\",\"why\":"
           "\"air\"}",
           "The probe was moved (air): now in sample final" },
-        { "{\"k\":\"moved\",\"by\":\"value\",\"why\":\"same beaker disturbed?\"}",
-          "Not moved, but the value changed: same beaker disturbed?" },
+        { "{\"k\":\"moved\",\"by\":\"value\",\"why\":\"the value changed: same beaker "
+          "disturbed?\"}",
+          "The value changed: same beaker disturbed?" },
         { "{\"k\":\"not-settled\",\"name\":\"final\",\"kind\":\"sample\",\"why\":\"15 min are "
           "over\"}",
           "Not settled, no value taken: sample final: 15 min are over" },
