@@ -21,6 +21,7 @@
 void sm_front_init(struct sm_front *f, struct sm_pace pace, double noise, double step)
 {
     memset(f, 0, sizeof *f);
+    f->swift_t_ns = INT64_MIN;
     sm_noise_init(&f->noise, noise);
     sm_step_init(&f->step, step);
     sm_front_pace(f, pace);
@@ -103,12 +104,19 @@ static void keep_steady(struct sm_front *f, double dt_s, double tolerance)
     f->steady = fmax(fmin(f->steady, f->noise.sd), least);
 }
 
-/* Further from the last accepted reading than a signal that slows down can be? */
-static bool is_odd(const struct sm_front *f, const struct sm_signal_reading *r, double tolerance)
+/* A change from one reading to the next that is no accident of a signal at rest. */
+static double beyond_rest(const struct sm_front *f, double tolerance)
 {
     const double most = TOLERANCES * tolerance;
     const double noise = f->noise.known ? fmin(CERTAIN * noise_for_departures(f), most) : most;
-    const double more = fmax(fmax(tolerance, STEPS * sm_step_now(&f->step)), noise);
+
+    return fmax(fmax(tolerance, STEPS * sm_step_now(&f->step)), noise);
+}
+
+/* Further from the last accepted reading than a signal that slows down can be? */
+static bool is_odd(const struct sm_front *f, const struct sm_signal_reading *r, double tolerance)
+{
+    const double more = beyond_rest(f, tolerance);
     double down = 0, up = 0, ahead_s, change;
 
     if (f->n_last < 2)
@@ -132,6 +140,8 @@ static void learn(struct sm_front *f, int64_t t_ns, double x, int64_t t1_ns, dou
 static bool take(struct sm_front *f, const struct sm_signal_reading *r, double tolerance,
                  struct sm_block_step *ret_step)
 {
+    if (f->n_last > 0 && fabs(r->value - f->last[0].x) > beyond_rest(f, tolerance))
+        f->swift_t_ns = r->t_ns;
     memmove(&f->last[1], &f->last[0], (SM_FRONT_LAST - 1) * sizeof f->last[0]);
     f->last[0].t_ns = r->t_ns;
     f->last[0].x = r->value;

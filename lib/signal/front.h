@@ -35,9 +35,11 @@ struct sm_front {
         double x;
     } last[SM_FRONT_LAST]; /* accepted ones, the newest first */
     unsigned n_last;
-    double steady;     /* noise as it was when the signal was quietest of late, u */
-    double usual_dt_s; /* spacing of readings, smoothed */
-    int64_t seen_t_ns; /* the latest reading, odd or not */
+    int64_t swift_t_ns; /* the latest that was taken only because the signal was swift before it: a
+                         * departure may hide in its change; INT64_MIN: none */
+    double steady;      /* noise as it was when the signal was quietest of late, u */
+    double usual_dt_s;  /* spacing of readings, smoothed */
+    int64_t seen_t_ns;  /* the latest reading, odd or not */
     bool seen;
     uint32_t odd_bits; /* the latest readings, a bit each: kept back? */
     struct sm_signal_reading odd[SM_FRONT_ODD];

@@ -4,7 +4,8 @@
 
 bool sm_judge_settled(const struct sm_judge *j, struct sm_settled *ret_settled)
 {
-    if (j->stay->n == 0 || j->t_ns - j->stay->dwell_t_ns < j->rule->dwell_ns)
+    if (j->stay->n == 0 || j->t_ns - j->stay->dwell_t_ns < j->rule->dwell_ns ||
+        j->t_ns - j->stay->swift_t_ns < j->rule->dwell_ns)
         return false;
     switch (j->rule->kind) {
     case SM_RULE_SPREAD:

@@ -9,7 +9,8 @@
 #define MAD_TO_SD 1.4826 /* sd of a normal variable over the median of its size */
 #define RATIO_LEAST 0.2  /* spacings more uneven than this are taken as this */
 #define RATIO_MOST 5.0
-#define SAME 1e-9 /* relative: differences below this are rounding, not a display step */
+#define STEP_MOST 1e150 /* squares of more are no numbers any more */
+#define SAME 1e-9       /* relative: differences below this are rounding, not a display step */
 
 void sm_noise_init(struct sm_noise *n, double before)
 {
@@ -52,7 +53,7 @@ void sm_step_init(struct sm_step *s, double before)
 
 void sm_step_see(struct sm_step *s, double value, double given)
 {
-    s->given = given > 0 ? given : 0;
+    s->given = given > 0 && given < STEP_MOST ? given : 0;
     if (s->has_last) {
         const double change = fabs(value - s->last);
 

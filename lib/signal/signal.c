@@ -19,6 +19,8 @@
 #define AWAY_TOLERANCES_MOST 10.0
 #define USUAL_WEIGHT 0.25 /* of a new wait in the usual one */
 
+#define VALUE_MOST 1e150 /* squares of more are no numbers any more; no meter shows it */
+
 static bool span_ok(int64_t ns, int64_t least_ns)
 {
     return ns >= least_ns && ns <= SPAN_MOST_NS;
@@ -169,6 +171,8 @@ static void add(struct sm_signal *s, const struct sm_signal_reading *r)
     if (s->where == SM_STAYING && sm_stay_now(s)->captured)
         return;
     sm_stay_add(sm_stay_now(s), r, sm_judge_over_ns(&s->rule));
+    if (s->front.swift_t_ns == r->t_ns)
+        sm_stay_now(s)->swift_t_ns = r->t_ns;
     sm_way_look_back(s);
 }
 
@@ -245,8 +249,9 @@ static void on_reading(struct sm_signal *s, const struct sm_signal_reading *r)
     on_time(s, r->t_ns);
     switch (r->flag) {
     case SM_FLAG_OK:
-        if (s->rule.has_plausible &&
-            (r->value < s->rule.plausible_from || r->value > s->rule.plausible_to))
+        if (fabs(r->value) > VALUE_MOST ||
+            (s->rule.has_plausible &&
+             (r->value < s->rule.plausible_from || r->value > s->rule.plausible_to)))
             on_open(s, r->t_ns, SM_TRANSIT_PLAUSIBLE);
         else
             on_good(s, r);

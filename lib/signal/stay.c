@@ -6,7 +6,7 @@
 
 void sm_stay_again(struct sm_stay *s, int64_t t_ns, int64_t bin_ns)
 {
-    s->anchor_t_ns = s->dwell_t_ns = t_ns;
+    s->anchor_t_ns = s->dwell_t_ns = s->swift_t_ns = t_ns;
     s->n = 0;
     sm_bins_begin(&s->bins, t_ns, bin_ns);
     sm_window_begin(&s->window);
@@ -30,7 +30,7 @@ void sm_stay_add(struct sm_stay *s, const struct sm_signal_reading *r, int64_t o
     if (s->n == 0)
         s->first_t_ns = r->t_ns;
     if (s->n < 3)
-        s->first[s->n] = r->value;
+        s->first[s->n] = *r;
     if (s->n < UINT_MAX)
         s->n++;
     (void)sm_bins_add(&s->bins, r->t_ns, r->value);

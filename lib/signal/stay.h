@@ -22,17 +22,19 @@ struct sm_stay {
     int64_t anchor_t_ns;   /* its readings begin here; later than moved_t_ns when a slow start went
                             * on */
     int64_t dwell_t_ns;    /* the dwell counts from here: the anchor, or the end of a lift */
+    int64_t swift_t_ns;    /* the latest reading in which a departure may hide (front.h): nothing is
+                            * captured within a dwell of it */
     int64_t way_from_t_ns; /* by value or transit: when the way that led here began */
     bool way_open;         /* … and an open circuit was in it, seen so: */
     enum sm_transit_how way_how;
     struct sm_going going; /* the latest that led here */
     unsigned lifts;
     bool captured;
-    bool given_up;      /* the longest wait is over */
-    double value, u95;  /* captured */
-    unsigned n;         /* readings */
-    int64_t first_t_ns; /* the first of them */
-    double first[3];    /* and the first three */
+    bool given_up;                     /* the longest wait is over */
+    double value, u95;                 /* captured */
+    unsigned n;                        /* readings */
+    int64_t first_t_ns;                /* the first of them */
+    struct sm_signal_reading first[3]; /* and the first three */
     struct sm_bins bins;
     struct sm_window window;
 };

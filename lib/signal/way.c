@@ -191,7 +191,7 @@ void sm_way_tell(struct sm_signal *s, int64_t t_ns)
         (w->kept && t_ns - w->kept_t_ns <= s->pace.lift_ns))
         return;
     let_go(s, "moved on before it settled", false);
-    stay->way_from_t_ns = w->from_t_ns;
+    stay->way_from_t_ns = w->from_known ? w->from_t_ns : stay->anchor_t_ns;
     stay->way_open = w->transit;
     stay->way_how = w->how;
     stay->going = w->last;
@@ -288,15 +288,20 @@ void sm_way_look_back(struct sm_signal *s)
 {
     const struct sm_stay *stay = sm_stay_now(s);
     const double noise = ALIKE_NOISE * fmin(s->front.noise.sd, sm_tolerance(s));
-    const double *x = stay->first;
     double least, largest;
 
     if (s->where != SM_LEAVING || stay->n != 3 || !s->way.kept)
         return;
-    least = fmin(x[0], fmin(x[1], x[2]));
-    largest = fmax(x[0], fmax(x[1], x[2]));
-    if (is_back(s, (least + largest) / 2, (largest - least) / 2, noise, stay->first_t_ns))
-        put_back(s, stay->first_t_ns);
+    least = largest = stay->first[0].value;
+    for (unsigned i = 1; i < 3; i++) {
+        least = fmin(least, stay->first[i].value);
+        largest = fmax(largest, stay->first[i].value);
+    }
+    if (!is_back(s, (least + largest) / 2, (largest - least) / 2, noise, stay->first_t_ns))
+        return;
+    put_back(s, stay->first_t_ns);
+    for (unsigned i = 0; i < 3; i++)
+        sm_stay_add(sm_stay_now(s), &stay->first[i], sm_judge_over_ns(&s->rule));
 }
 
 void sm_way_mark(struct sm_signal *s, int64_t t_ns)

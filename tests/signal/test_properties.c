@@ -417,6 +417,102 @@ static void readings_in_bursts_of_one_time_are_no_trouble(void **state)
     }
 }
 
+/* ---- nonsense ---- */
+
+static double wild(struct bench *b)
+{
+    static const double sizes[] = { 0, 1e-310, 1e-12, 0.1, 1, 50, 1e6, 1e149, 1e160, 1.7e308 };
+    const double size = sizes[(int)(made_uniform(b) * COUNT(sizes))];
+
+    return made_uniform(b) < 0.5 ? -size : size;
+}
+
+static struct sm_signal_input any_input(struct bench *b, int64_t t_ns, bool calm)
+{
+    struct sm_signal_input in = { .kind = SM_SIGNAL_READING, .t_ns = t_ns };
+    const double which = made_uniform(b);
+
+    in.why = "any";
+    in.class = (enum sm_class)(made_uniform(b) * SM_CLASS_COUNT);
+    in.clock = (unsigned)(made_uniform(b) * 32);
+    if (which < 0.002)
+        in.kind = SM_SIGNAL_MARK;
+    else if (which < 0.02)
+        in.kind = SM_SIGNAL_TICK;
+    else if (which < 0.022)
+        in.kind = SM_SIGNAL_END;
+    in.reading.value = calm ? 12 : wild(b);
+    in.reading.step = calm ? 0 : fabs(wild(b));
+    if (made_uniform(b) < (calm ? 0.002 : 0.1))
+        in.reading.flag = (enum sm_flag)(made_uniform(b) * (SM_FLAG_UNUSABLE + 1));
+    in.reading.other[0] = (struct sm_other){ made_uniform(b) < 0.9, wild(b), 0 };
+    return in;
+}
+
+static void check_event(const struct sm_signal_event *e, int64_t t_ns, bool *told, unsigned seed)
+{
+    if (e->t_ns != t_ns)
+        fail_msg("seed %u: an event of another time", seed);
+    if (e->kind == SM_SIGNAL_MOVED) {
+        *told = true;
+        if (e->from_t_ns > t_ns)
+            fail_msg("seed %u: moved in the future", seed);
+    }
+    if (e->kind == SM_SIGNAL_TRANSIT && (e->from_t_ns > e->to_t_ns || e->to_t_ns > t_ns))
+        fail_msg("seed %u: a transit from %lld to %lld at %lld, %s, returned %d", seed,
+                 (long long)e->from_t_ns, (long long)e->to_t_ns, (long long)t_ns,
+                 sm_transit_how_name(e->how), e->returned);
+    if (e->kind != SM_SIGNAL_SETTLED)
+        return;
+    if (!*told)
+        fail_msg("seed %u: a capture that follows no moved", seed);
+    *told = false;
+    if (!isfinite(e->settled.value) || !(e->settled.u95 >= 0) || e->settled.readings < 3 ||
+        e->settled.from_t_ns > e->settled.to_t_ns || e->settled.to_t_ns != t_ns)
+        fail_msg("seed %u: captured %g with U %g out of %u readings from %lld to %lld at %lld",
+                 seed, e->settled.value, e->settled.u95, e->settled.readings,
+                 (long long)e->settled.from_t_ns, (long long)e->settled.to_t_ns, (long long)t_ns);
+}
+
+static void nonsense_gives_no_wrong_number(void **state)
+{
+    int captures = 0;
+
+    (void)state;
+    for (unsigned seed = 0; seed < 60; seed++) {
+        const struct pace *p = &paces[seed % COUNT(paces)];
+        struct bench b = made_bench(seed);
+        const struct sm_rule rule = made_rule(TOLERANCE, p->dwell_s * (seed % 5 != 0), p->over_s);
+        const struct sm_channel_memory memory = { 0 };
+        const struct sm_signal_start start = { .place = SM_PLACE_LEFT };
+        struct sm_signal *signal = NULL;
+        int64_t t_ns = -made_ns(100);
+        bool told = false, calm = false;
+
+        assert_int_equal(sm_signal_create(&rule, 1, &memory, &start, &signal), SM_OK);
+        for (int i = 0; i < 4000; i++) {
+            struct sm_signal_event e;
+            struct sm_signal_input in;
+
+            if (made_uniform(&b) < 0.01)
+                calm = !calm;
+            if (made_uniform(&b) < 0.9)
+                t_ns += made_ns(made_between(&b, 0, made_uniform(&b) < 0.02 ? 500 : 0.5));
+            in = any_input(&b, t_ns, calm);
+            assert_int_equal(sm_signal_feed(signal, &in), SM_OK);
+            while (sm_signal_next(signal, &e)) {
+                check_event(&e, t_ns, &told, seed);
+                captures += e.kind == SM_SIGNAL_SETTLED;
+            }
+            if (sm_signal_deadline(signal) <= t_ns)
+                fail_msg("seed %u: a deadline that is past", seed);
+        }
+        sm_signal_destroy(signal);
+    }
+    if (captures < 100) /* else nothing was tried */
+        fail_msg("only %d captures", captures);
+}
+
 int main(void)
 {
     const struct CMUnitTest tests[] = {
@@ -427,6 +523,7 @@ int main(void)
         cmocka_unit_test(one_to_three_stray_readings_change_nothing),
         cmocka_unit_test(a_session_cut_between_immersions_gives_the_same_captures),
         cmocka_unit_test(readings_in_bursts_of_one_time_are_no_trouble),
+        cmocka_unit_test(nonsense_gives_no_wrong_number),
     };
 
     return cmocka_run_group_tests(tests, NULL, NULL);

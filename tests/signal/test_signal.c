@@ -383,6 +383,18 @@ static void a_rinse_after_air_goes_on_as_the_same_way(void **state)
            "transit:open circuit, moved:transit, settled");
 }
 
+static void nothing_is_captured_within_a_dwell_of_a_swift_change(void **state)
+{
+    struct bench b = plain();
+
+    (void)state;
+    for (int i = 0; i < 30; i++) /* no departure, but the end of a rinse could hide in it */
+        made_stay(&b, 50 + 5 * i, 1);
+    made_stay(&b, 50 + 5 * 29, 60);
+    check_ns("settled", tape_get(&tape, SM_SIGNAL_SETTLED, 0)->t_ns, 30 + 22);
+    finish(&b, "ramp", "moved:start, settled");
+}
+
 static void the_longest_wait_is_told_once_and_then_nothing_is_captured(void **state)
 {
     struct bench b = plain();
@@ -895,6 +907,7 @@ int main(void)
         cmocka_unit_test(an_immersion_left_unsettled_is_told_only_if_it_outlasted_the_dwell),
         cmocka_unit_test(air_and_rinses_make_one_way_with_one_end),
         cmocka_unit_test(a_rinse_after_air_goes_on_as_the_same_way),
+        cmocka_unit_test(nothing_is_captured_within_a_dwell_of_a_swift_change),
         cmocka_unit_test(the_longest_wait_is_told_once_and_then_nothing_is_captured),
         cmocka_unit_test(without_a_tick_the_longest_wait_comes_with_the_next_reading),
         cmocka_unit_test(a_mark_always_begins_an_immersion_and_no_reading_before_it_counts),

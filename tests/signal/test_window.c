@@ -56,7 +56,7 @@ static struct twin slow(int from, int to)
     for (int i = from; i <= to; i++)
         squares += (all[i].value - sum / t.n) * (all[i].value - sum / t.n);
     t.sd = t.n > 1 ? (double)sqrtl(squares / (t.n - 1)) : 0;
-    t.other_mean = (double)(other / others);
+    t.other_mean = others > 0 ? (double)(other / others) : 0;
     t.other_range = hi - lo;
     return t;
 }

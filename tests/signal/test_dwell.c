@@ -1,0 +1,155 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* From where the dwell counts: not from a departure that is known, but from the last one that could
+ * have been. Air at few readings a second can look like a signal that slows down, right into the
+ * rinse; then the way from air to rinse is no departure, and a dwell counted from the air would be
+ * over in the rinse. Both courses are from simulated sessions in which that happened. */
+#include "signal/made.h"
+
+#define TOLERANCE 0.6
+#define DWELL_S 22.0
+#define OVER_S 10.0
+
+static struct tape tape;
+
+struct course {
+    const char *name;
+    double beaker;    /* where the probe was before */
+    double rinse_t_s; /* when the rinse began */
+    size_t n;
+    struct {
+        double t_s, x;
+    } at[24];
+};
+
+static const struct course
+    courses[] = {
+        { "air that slows down, three readings odd, and on",
+          -20.0,
+          31.9,
+          20,
+          { { 26.63, -7.7 },   { 27.76, 38.2 },  { 28.96, 62.0 },  { 30.20, 218.4 },
+            { 31.31, -351.2 }, { 32.52, 27.8 },  { 33.71, 134.6 }, { 34.81, 148.4 },
+            { 36.11, 150.6 },  { 37.25, 150.7 }, { 38.54, 150.8 }, { 39.73, 150.9 },
+            { 40.83, 150.8 },  { 41.93, 150.8 }, { 43.10, 150.8 }, { 44.34, 150.7 },
+            { 45.47, 150.8 },  { 46.88, 150.8 }, { 47.94, 150.7 }, { 49.08, 150.7 } } },
+        { "air whose last reading is taken for a stray one",
+          3.2,
+          24.0,
+          16,
+          { { 15.78, 13.4 },
+            { 17.57, -92.3 },
+            { 19.26, 285.3 },
+            { 21.24, 96.8 },
+            { 22.98, -502.1 },
+            { 24.54, -54.0 },
+            { 26.52, -59.6 },
+            { 28.09, -59.9 },
+            { 29.93, -59.8 },
+            { 31.71, -59.9 },
+            { 33.49, -59.8 },
+            { 35.10, -59.9 },
+            { 36.88, -60.0 },
+            { 38.79, -59.9 },
+            { 40.48, -59.9 },
+            { 42.23, -60.0 } } },
+    };
+
+static struct bench plain(void)
+{
+    const struct sm_rule rule = made_rule(TOLERANCE, DWELL_S, OVER_S);
+    struct bench b = made_bench(1);
+
+    memset(&tape, 0, sizeof tape);
+    b.tape = &tape;
+    b.signal = made_signal(&rule);
+    b.step = 0.1;
+    b.noise = 0.08;
+    return b;
+}
+
+/* The probe in a beaker until it is captured, at t_s = 0 of the course. */
+static void beaker(struct bench *b, double level, double rate)
+{
+    b->value = level;
+    b->rate = rate;
+    b->t_s = -50;
+    b->shift_ns = 60 * SM_NS_PER_S;
+    made_stay(b, level, 50);
+    assert_int_equal(tape_count(&tape, SM_SIGNAL_SETTLED), 1);
+}
+
+static void
+a_rinse_shorter_than_the_dwell_is_not_captured_whatever_the_air_looked_like(void **state)
+{
+    (void)state;
+    for (size_t i = 0; i < COUNT(courses); i++) {
+        const struct course *c = &courses[i];
+        struct bench b = plain();
+
+        beaker(&b, c->beaker, 0.8);
+        made_stay(&b, c->beaker, c->at[0].t_s - 1);
+        for (size_t k = 0; k < c->n; k++)
+            made_put(&b, c->at[k].t_s, c->at[k].x, SM_FLAG_OK);
+        if (tape_count(&tape, SM_SIGNAL_SETTLED) != 1)
+            fail_msg("%s: captured %.1f s into the rinse", c->name,
+                     1e-9 * (double)(tape.event[tape.n - 1].t_ns - b.shift_ns) - c->rinse_t_s);
+        sm_signal_destroy(b.signal);
+    }
+}
+
+static void what_stays_for_the_dwell_after_its_last_swift_change_is_captured(void **state)
+{
+    (void)state;
+    for (size_t i = 0; i < COUNT(courses); i++) {
+        const struct course *c = &courses[i];
+        struct bench b = plain();
+        const struct sm_signal_event *settled;
+        double t_s;
+
+        beaker(&b, c->beaker, 0.8);
+        made_stay(&b, c->beaker, c->at[0].t_s - 1);
+        for (size_t k = 0; k < c->n; k++)
+            made_put(&b, c->at[k].t_s, c->at[k].x, SM_FLAG_OK);
+        b.t_s = c->at[c->n - 1].t_s;
+        b.value = c->at[c->n - 1].x;
+        made_stay(&b, b.value, DWELL_S);
+        settled = tape_get(&tape, SM_SIGNAL_SETTLED, 1);
+        t_s = 1e-9 * (double)(settled->t_ns - b.shift_ns);
+        if (!(t_s >= c->rinse_t_s + DWELL_S - 1 && t_s <= c->rinse_t_s + DWELL_S + 7))
+            fail_msg("%s: captured %.1f s into it", c->name, t_s - c->rinse_t_s);
+        sm_signal_destroy(b.signal);
+    }
+}
+
+/* The dwell of an ordinary response: a step of 100 and tau 3 s, one reading a second. The change
+ * from reading to reading falls under the tolerance (0.6) after 3 ln(100 (e^(1/3) - 1) / 0.6) =
+ * 12.6 s; the reading at 12 s is the last swift one. */
+static void a_swift_response_delays_the_dwell_until_it_has_slowed_down(void **state)
+{
+    struct bench b = plain();
+    double began_s, settled_s;
+
+    (void)state;
+    b.noise = 0;
+    b.step = 0;
+    beaker(&b, 0, 1);
+    made_open(&b, 4);
+    b.tau_s = 3;
+    made_stay(&b, 100, 60);
+    began_s = 1e-9 * (double)tape_get(&tape, SM_SIGNAL_MOVED, 1)->from_t_ns;
+    settled_s = 1e-9 * (double)tape_get(&tape, SM_SIGNAL_SETTLED, 1)->t_ns;
+    check_close("from the move to the capture, s", settled_s - began_s, 11 + DWELL_S, 1.01);
+    sm_signal_destroy(b.signal);
+}
+
+int main(void)
+{
+    const struct CMUnitTest tests[] = {
+        cmocka_unit_test(
+            a_rinse_shorter_than_the_dwell_is_not_captured_whatever_the_air_looked_like),
+        cmocka_unit_test(what_stays_for_the_dwell_after_its_last_swift_change_is_captured),
+        cmocka_unit_test(a_swift_response_delays_the_dwell_until_it_has_slowed_down),
+    };
+
+    return cmocka_run_group_tests(tests, NULL, NULL);
+}
