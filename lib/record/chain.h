@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* chain.h: stamps: SHA-256 over the entries of each group written together, often signed (Ed25519). */
+/* chain.h: stamps: SHA-256 over the entries of each group written together, often signed (Ed25519).
+ */
 #ifndef SM_RECORD_CHAIN_H
 #define SM_RECORD_CHAIN_H
 #include <stdbool.h>
@@ -9,9 +10,9 @@
 #include "base/status.h"
 #include "base/text.h"
 
-#define SM_HASH_HEX 65  /* with NUL */
+#define SM_HASH_HEX 65 /* with NUL */
 #define SM_SIG_HEX 129
-#define SM_KEY_HEX 65   /* public key, hex */
+#define SM_KEY_HEX 65 /* public key, hex */
 
 struct sm_hasher; /* SHA-256, fetched once, reused */
 SM_MUST_CHECK enum sm_status sm_hasher_create(struct sm_hasher **ret_hasher);
@@ -36,8 +37,8 @@ SM_MUST_CHECK enum sm_status sm_signature_check(const char *key_hex, const char 
 /* The same over any text; what is signed in a log is always a statement as above. */
 SM_MUST_CHECK enum sm_status sm_signer_sign_text(const struct sm_signer *s, const char *text,
                                                  size_t n, char ret_sig_hex[SM_SIG_HEX]);
-SM_MUST_CHECK enum sm_status sm_signature_check_text(const char *key_hex, const char *text, size_t n,
-                                                     const char *sig_hex);
+SM_MUST_CHECK enum sm_status sm_signature_check_text(const char *key_hex, const char *text,
+                                                     size_t n, const char *sig_hex);
 /* Short form for people: first 16 hex digits of the SHA-256 of the raw public key. */
 SM_MUST_CHECK enum sm_status sm_key_fingerprint(const char *key_hex, char ret_hex[17]);
 #endif

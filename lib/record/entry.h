@@ -9,10 +9,10 @@
 #define SM_FORMAT 1
 #define SM_ENTRY_MAX (1024u * 1024u) /* bytes of one line, the newline included */
 
-/* Writing: each writes one whole line with its newline. On t->cut the line is not whole: the storage
- * was too small (SM_ENTRY_MAX holds any). Text is UTF-8; a byte that is not becomes '?', so whoever
- * lets text in (acts, names of adapters, a meter's identity) makes it UTF-8 before the core sees it.
- * utc_us lies in the years 0000 to 9999. A live event (n = 0) is written without n. */
+/* Writing: each writes one whole line with its newline. On t->cut the line is not whole: the
+ * storage was too small (SM_ENTRY_MAX holds any). Text is UTF-8; a byte that is not becomes '?', so
+ * whoever lets text in (acts, names of adapters, a meter's identity) makes it UTF-8 before the core
+ * sees it. utc_us lies in the years 0000 to 9999. A live event (n = 0) is written without n. */
 void sm_entry_input(struct sm_text *t, const struct sm_input *in);
 void sm_entry_event(struct sm_text *t, const struct sm_event *e);
 
@@ -44,18 +44,26 @@ void sm_entry_stamp(struct sm_text *t, int64_t n, int64_t t_ns, int64_t utc_us, 
 
 /* Carried alone, as a JSON object without newline (inside `open` and the `carried` entry). */
 void sm_carried_write(struct sm_text *t, const struct sm_carried *c);
-/* o: the object alone, or a whole `carried` entry. What is left out is empty (an unknown real: NaN).
- * Unknown sections and keys are passed over and counted.
- *   SM_ESYNTAX  ret_why; ret_carried is then of no use */
+/* o: the object alone, or a whole `carried` entry. What is left out is empty (an unknown real:
+ * NaN). Unknown sections and keys are passed over and counted. SM_ESYNTAX  ret_why; ret_carried is
+ * then of no use */
 SM_MUST_CHECK enum sm_status sm_carried_read(const json_t *o, struct sm_carried *ret_carried,
-                                             unsigned *ret_passed_over, char ret_why[SM_REASON_SIZE]);
+                                             unsigned *ret_passed_over,
+                                             char ret_why[SM_REASON_SIZE]);
 
 /* Raw bytes as a JSON string with its quotes: printable ASCII as itself, \" and \\ so, the rest
  * \u00xx in lower-case hex. */
 void sm_bytes_write(struct sm_text *t, const unsigned char *bytes, size_t n);
 
-enum sm_entry_kind { SM_ENTRY_OPEN, SM_ENTRY_FILE, SM_ENTRY_INPUT, SM_ENTRY_EVENT, SM_ENTRY_STAMP,
-                     SM_ENTRY_CLOSE, SM_ENTRY_UNKNOWN };
+enum sm_entry_kind {
+    SM_ENTRY_OPEN,
+    SM_ENTRY_FILE,
+    SM_ENTRY_INPUT,
+    SM_ENTRY_EVENT,
+    SM_ENTRY_STAMP,
+    SM_ENTRY_CLOSE,
+    SM_ENTRY_UNKNOWN
+};
 
 /* Storage for one input read back from a log: what struct sm_input only lends. Heap, reused. */
 struct sm_entry_store {
@@ -78,9 +86,10 @@ struct sm_entry {
     json_t *json;             /* the whole object, owned: json_decref */
 };
 
-/* One line (without newline). An input's lent parts lie in *store. Reads untrusted text: strict JSON
- * (duplicate keys refused, depth and sizes limited).
- *   SM_ESYNTAX  not an entry: ret_why; nothing to free */
+/* One line (without newline). An input's lent parts lie in *store. Reads untrusted text: strict
+ * JSON (duplicate keys refused, depth and sizes limited). SM_ESYNTAX  not an entry: ret_why;
+ * nothing to free */
 SM_MUST_CHECK enum sm_status sm_entry_read(const char *line, size_t n, struct sm_entry_store *store,
-                                           struct sm_entry *ret_entry, char ret_why[SM_REASON_SIZE]);
+                                           struct sm_entry *ret_entry,
+                                           char ret_why[SM_REASON_SIZE]);
 #endif

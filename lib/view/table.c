@@ -374,7 +374,7 @@ static enum sm_status fail(char ret_why[SM_LINK_TEXT_SIZE], enum sm_status st, s
 }
 
 enum sm_status sm_export_add(struct sm_export *t, const char *text, size_t n, bool later,
-                            char ret_why[SM_LINK_TEXT_SIZE])
+                             char ret_why[SM_LINK_TEXT_SIZE])
 {
     const char *at = text, *end = text + n;
 

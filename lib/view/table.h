@@ -26,13 +26,13 @@ struct sm_export;
 
 /* Writes the header row, except of readings, whose channels are not known yet. SM_ENOMEM */
 SM_MUST_CHECK enum sm_status sm_export_create(const struct sm_export_ask *ask,
-                                             struct sm_export **ret_table);
+                                              struct sm_export **ret_table);
 /* One file's text up to its last stamp, in the order of ordinals. later: it is not asked for; it is
  * read for what it changes in the results of those before (SM_EXPORT_RESULTS; else passed over).
  *   SM_ESYNTAX  it cannot be read: ret_why
  *   SM_ENOMEM */
 SM_MUST_CHECK enum sm_status sm_export_add(struct sm_export *t, const char *text, size_t n,
-                                          bool later, char ret_why[SM_LINK_TEXT_SIZE]);
+                                           bool later, char ret_why[SM_LINK_TEXT_SIZE]);
 /* Writes what had to wait for the end. Returns the number of rows in all. */
 size_t sm_export_end(struct sm_export *t);
 void sm_export_destroy(struct sm_export *t);

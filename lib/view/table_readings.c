@@ -118,8 +118,8 @@ static void take_event(void *arg, const struct sm_event *e, const struct sm_core
 }
 
 enum sm_status sm_export_readings_add(const struct sm_export_ask *ask,
-                                     struct sm_export_readings **readings, const char *text,
-                                     size_t n, size_t *rows, char ret_why[SM_LINK_TEXT_SIZE])
+                                      struct sm_export_readings **readings, const char *text,
+                                      size_t n, size_t *rows, char ret_why[SM_LINK_TEXT_SIZE])
 {
     struct sm_export_readings *r = *readings;
     struct sm_rerun_ask again = { .text = text, .n = n, .event = take_event };
