@@ -70,12 +70,12 @@ static char *join(const char *folder, size_t n, const char *name)
     return path;
 }
 
-/* All log files of a folder whose ordinal is above `above`. */
+/* All log files of a folder (n 0: the root) whose ordinal is above `above`. */
 static enum sm_status add_folder(struct sm_log_list *l, const char *path, size_t n, int64_t above)
 {
     enum sm_status st = SM_OK;
     char *folder = strndup(path, n);
-    DIR *d = folder != NULL ? opendir(folder) : NULL;
+    DIR *d = folder != NULL ? opendir(n > 0 ? folder : "/") : NULL;
     const struct dirent *e;
 
     if (d == NULL) {
@@ -112,7 +112,7 @@ enum sm_status sm_log_list_add(struct sm_log_list *l, const char *path)
     return s;
 }
 
-/* Length of a path's folder; ret_dot: there is none in it, so it is ".". */
+/* Length of a path's folder; 0: the path names none. */
 static size_t folder_length(const char *path)
 {
     const char *slash = strrchr(path, '/');
@@ -120,16 +120,14 @@ static size_t folder_length(const char *path)
     return slash != NULL ? (size_t)(slash - path) : 0;
 }
 
-/* Is file i the newest one given of its folder? */
-static bool is_newest(const struct sm_log_list *l, size_t n, size_t i)
+/* Is f the newest one given of its folder (the last, of several alike)? */
+static bool is_newest(const struct sm_log_file *list, size_t n, const struct sm_log_file *f)
 {
-    const size_t len = folder_length(l->file[i].path);
+    const size_t len = folder_length(f->path);
 
-    for (size_t k = 0; k < n; k++)
-        if (folder_length(l->file[k].path) == len &&
-            memcmp(l->file[k].path, l->file[i].path, len) == 0 &&
-            (l->file[k].ordinal > l->file[i].ordinal ||
-             (l->file[k].ordinal == l->file[i].ordinal && k > i)))
+    for (const struct sm_log_file *g = list; g < list + n; g++)
+        if (folder_length(g->path) == len && memcmp(g->path, f->path, len) == 0 &&
+            (g->ordinal > f->ordinal || (g->ordinal == f->ordinal && g > f)))
             return false;
     return true;
 }
@@ -141,12 +139,11 @@ enum sm_status sm_log_list_add_later(struct sm_log_list *l)
 
     for (size_t i = 0; i < given && st == SM_OK; i++) {
         const char *path = l->file[i].path;
-        const size_t len = folder_length(path);
 
-        if (sm_file_ordinal(base_name(path)) < 0 || !is_newest(l, given, i))
+        if (sm_file_ordinal(base_name(path)) < 0 || !is_newest(l->file, given, &l->file[i]))
             continue;
-        if (len > 0 || path[0] == '/')
-            st = add_folder(l, path, len, l->file[i].ordinal);
+        if (strchr(path, '/') != NULL)
+            st = add_folder(l, path, folder_length(path), l->file[i].ordinal);
         else
             st = add_folder(l, ".", 1, l->file[i].ordinal);
     }

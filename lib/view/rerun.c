@@ -19,8 +19,8 @@ struct run {
     struct sm_entry *entry;
     struct sm_logged logged;
     struct sm_setup *setup;
-    struct sm_sheet *sheet; /* as parsed last */
-    bool has_sheet;         /* a sheet was in force at the file's head */
+    struct sm_sheet *sheet;           /* as parsed last */
+    bool has_sheet;                   /* a sheet was in force at the file's head */
     const struct sm_core_setup *mine; /* the meter's */
     struct sm_core *core;
     struct sm_carried *carried; /* of the `open`, then the newest */
