@@ -14,9 +14,10 @@ static char path[160];
 static char *log_text;
 static size_t log_n;
 
-static int make_log(void **state)
+/* The demonstration's session; roll: the file is changed once 14 of its 15 items are measured, with
+ * only the closing check to come. */
+static void play(struct log_maker *m, bool roll)
 {
-    static struct log_maker m;
     struct sm_scenario sc;
     struct sm_blame blame[8];
     struct sm_blames blames;
@@ -24,19 +25,36 @@ static int make_log(void **state)
     size_t n;
     char *text = check_read_file("tests/sim/scenarios/try.scn", &n);
 
-    (void)state;
     sm_blames_init(&blames, blame, COUNT(blame));
     sm_scenario_init(&sc);
     assert_int_equal(sm_scenario_read(&sc, "try.scn", text, n, &blames), SM_OK);
     free(text);
     assert_int_equal(sm_sim_create(&sc, &sim), SM_OK);
-    log_maker_begin(&m, "conf/try.yaml", "try", 1796112723000000);
-    log_maker_act(&m, SM_ACT_ANALYST, "try");
+    log_maker_begin(m, "conf/try.yaml", "try", 1796112723000000);
+    log_maker_act(m, SM_ACT_ANALYST, "try");
     text = check_read_file("conf/sheets/try.yaml", &n);
-    log_maker_sheet(&m, "conf/sheets/try.yaml", text, n);
+    log_maker_sheet(m, "conf/sheets/try.yaml", text, n);
     free(text);
-    log_maker_play(&m, sim, SM_NEVER);
-    log_maker_end(&m);
+    while (log_maker_step(m, sim, SM_NEVER)) {
+        struct sm_core_status now;
+
+        sm_core_status(m->core, &now);
+        if (roll && now.measured == 14 && sm_core_may_roll(m->core)) {
+            log_maker_roll(m);
+            roll = false;
+        }
+    }
+    log_maker_end(m);
+    sm_sim_destroy(sim);
+    sm_scenario_free(&sc);
+}
+
+static int make_log(void **state)
+{
+    static struct log_maker m;
+
+    (void)state;
+    play(&m, false);
     assert_int_equal(m.n_files, 1);
     log_n = m.file[0].n;
     log_text = malloc(log_n + 1);
@@ -44,8 +62,6 @@ static int make_log(void **state)
     memcpy(log_text, m.file[0].text, log_n);
     log_text[log_n] = '\0';
     log_maker_finish(&m);
-    sm_sim_destroy(sim);
-    sm_scenario_free(&sc);
     scratch_make(&scratch);
     snprintf(path, sizeof path, "%s/000001_2026-12-01T081203Z.jsonl", scratch.path);
     scratch_write(path, log_text);
@@ -234,6 +250,41 @@ static void readings_are_those_that_came_down_the_wire(void **state)
     free(csv);
 }
 
+static void a_later_file_of_the_folder_is_read_for_what_it_released(void **state)
+{
+    static struct log_maker m;
+    struct scratch folder;
+    char first[160], second[160], *argv[] = { first, NULL }, *out, *err, text[256];
+
+    (void)state;
+    play(&m, true);
+    assert_int_equal(m.n_files, 2);
+    scratch_make(&folder);
+    snprintf(first, sizeof first, "%s/000001_2026-12-01T081203Z.jsonl", folder.path);
+    snprintf(second, sizeof second, "%s/000002_2026-12-01T081303Z.jsonl", folder.path);
+    scratch_write(first, m.file[0].text);
+    for (int both = 0; both < 2; both++) {
+        assert_int_equal(capture_run(sm_stillmark_export, argv, &out, &err), 0);
+        assert_int_equal(rows(out), 8);
+        for (size_t i = 1; i <= 8; i++) {
+            cell(out, i, column_of(out, "state"), text);
+            assert_string_equal(text, both ? "released" : "provisional");
+        }
+        assert_true(!both ||
+                    strstr(err, "000002_2026-12-01T081303Z.jsonl: read for later") != NULL);
+        free(out);
+        free(err);
+        scratch_write(second, m.file[1].text);
+    }
+    argv[0] = folder.path;
+    assert_int_equal(capture_run(sm_stillmark_verify, argv, &out, &err), 0);
+    assert_non_null(strstr(out, "2 files: all verify"));
+    free(out);
+    free(err);
+    log_maker_finish(&m);
+    scratch_remove(&folder);
+}
+
 static void a_damaged_log_exports_nothing(void **state)
 {
     char *hurt = strstr(log_text, "\"k\":\"result\""), *out;
@@ -264,6 +315,7 @@ int main(void)
         cmocka_unit_test(results_are_released_and_are_what_the_scenario_says),
         cmocka_unit_test(captures_and_curve_have_a_row_each),
         cmocka_unit_test(readings_are_those_that_came_down_the_wire),
+        cmocka_unit_test(a_later_file_of_the_folder_is_read_for_what_it_released),
         cmocka_unit_test(a_damaged_log_exports_nothing),
         cmocka_unit_test(what_is_asked_wrongly_is_refused),
     };
