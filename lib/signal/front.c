@@ -104,19 +104,28 @@ static void keep_steady(struct sm_front *f, double dt_s, double tolerance)
     f->steady = fmax(fmin(f->steady, f->noise.sd), least);
 }
 
-/* A change from one reading to the next that is no accident of a signal at rest. */
-static double beyond_rest(const struct sm_front *f, double tolerance)
+/* What noise may make of the difference of two readings; as much as can be while it is unknown. */
+static double noise_between(const struct sm_front *f, double tolerance)
 {
     const double most = TOLERANCES * tolerance;
-    const double noise = f->noise.known ? fmin(CERTAIN * noise_for_departures(f), most) : most;
 
-    return fmax(fmax(tolerance, STEPS * sm_step_now(&f->step)), noise);
+    return f->noise.known ? fmin(CERTAIN * noise_for_departures(f), most) : most;
+}
+
+/* A change from one reading to the next that is none of a signal at rest. The step may have been
+ * learned from this very course, so it does not count for more than the tolerance. */
+static bool is_swift(const struct sm_front *f, double change, double tolerance)
+{
+    const double steps = STEPS * fmin(sm_step_now(&f->step), tolerance);
+
+    return fabs(change) > fmax(fmax(tolerance, steps), noise_between(f, tolerance));
 }
 
 /* Further from the last accepted reading than a signal that slows down can be? */
 static bool is_odd(const struct sm_front *f, const struct sm_signal_reading *r, double tolerance)
 {
-    const double more = beyond_rest(f, tolerance);
+    const double more =
+        fmax(fmax(tolerance, STEPS * sm_step_now(&f->step)), noise_between(f, tolerance));
     double down = 0, up = 0, ahead_s, change;
 
     if (f->n_last < 2)
@@ -140,7 +149,7 @@ static void learn(struct sm_front *f, int64_t t_ns, double x, int64_t t1_ns, dou
 static bool take(struct sm_front *f, const struct sm_signal_reading *r, double tolerance,
                  struct sm_block_step *ret_step)
 {
-    if (f->n_last > 0 && fabs(r->value - f->last[0].x) > beyond_rest(f, tolerance))
+    if (f->n_last > 0 && is_swift(f, r->value - f->last[0].x, tolerance))
         f->swift_t_ns = r->t_ns;
     memmove(&f->last[1], &f->last[0], (SM_FRONT_LAST - 1) * sizeof f->last[0]);
     f->last[0].t_ns = r->t_ns;
