@@ -217,6 +217,7 @@ static void bad_meters_disturb_no_other(void **state)
     live_start(&l);
     if (!live_connect(&l, 10000))
         fail_msg("no daemon after 10 s");
+    live_disconnect(&l); /* nobody follows */
     await_all_open();
     begin = outside_look(l.daemon);
     begin_ns = live_now_ns();
