@@ -250,6 +250,15 @@ static void readings_are_those_that_came_down_the_wire(void **state)
     free(csv);
 }
 
+static void put_file(const char *name, const struct log_maker_file *file)
+{
+    FILE *f = fopen(name, "wb");
+
+    assert_non_null(f);
+    assert_int_equal(fwrite(file->text, 1, file->n, f), file->n);
+    assert_int_equal(fclose(f), 0);
+}
+
 static void a_later_file_of_the_folder_is_read_for_what_it_released(void **state)
 {
     static struct log_maker m;
@@ -262,7 +271,7 @@ static void a_later_file_of_the_folder_is_read_for_what_it_released(void **state
     scratch_make(&folder);
     snprintf(first, sizeof first, "%s/000001_2026-12-01T081203Z.jsonl", folder.path);
     snprintf(second, sizeof second, "%s/000002_2026-12-01T081303Z.jsonl", folder.path);
-    scratch_write(first, m.file[0].text);
+    put_file(first, &m.file[0]);
     for (int both = 0; both < 2; both++) {
         assert_int_equal(capture_run(sm_stillmark_export, argv, &out, &err), 0);
         assert_int_equal(rows(out), 8);
@@ -274,7 +283,7 @@ static void a_later_file_of_the_folder_is_read_for_what_it_released(void **state
                     strstr(err, "000002_2026-12-01T081303Z.jsonl: read for later") != NULL);
         free(out);
         free(err);
-        scratch_write(second, m.file[1].text);
+        put_file(second, &m.file[1]);
     }
     argv[0] = folder.path;
     assert_int_equal(capture_run(sm_stillmark_verify, argv, &out, &err), 0);
