@@ -26,6 +26,20 @@ static void see_name(void *arg, const char *name)
     }
 }
 
+/* Files of attempts that ended before they were shown: nothing in them was announced. */
+static void drop_unshown(void *arg, const char *name)
+{
+    const struct sm_folder *const *f = arg;
+    const char *const ending = strrchr(name, '.');
+    char shown[SM_FILE_NAME_SIZE];
+
+    if (ending == NULL || strcmp(ending, ".new") != 0 || (size_t)(ending - name) >= sizeof shown)
+        return;
+    snprintf(shown, sizeof shown, "%.*s", (int)(ending - name), name);
+    if (sm_file_ordinal(shown) >= 0)
+        sm_folder_drop_file(*f, shown);
+}
+
 /* Into malloc'd storage; -errno. */
 static int read_whole(const struct sm_door *door, const char *path, char **ret_text, size_t *ret_n)
 {
@@ -136,6 +150,7 @@ enum sm_status sm_folder_recover(const struct sm_folder *f, struct sm_beginning 
         return SM_ENOMEM;
     }
     b->ordinal = b->next_n = 1;
+    (void)f->door->list(f->door, f->path, drop_unshown, &f);
     while (s == SM_OK && !b->has_state) {
         const int r = f->door->list(f->door, f->path, see_name, &look);
         if (r < 0) {

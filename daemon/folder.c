@@ -27,6 +27,22 @@ static bool still_the_same(const struct sm_folder *f, const char *lock)
            st.st_ino == f->lock_ino;
 }
 
+static enum sm_status find_or_make(const struct sm_folder *f, char ret_why[SM_WHY_SIZE])
+{
+    struct stat st;
+    int r;
+
+    if (f->lock_fd < 0)
+        return sm_make_folder(f->door, f->path, 0750, ret_why);
+    r = f->door->stat(f->door, f->path, &st);
+    if (r >= 0)
+        return SM_OK;
+    snprintf(ret_why, SM_WHY_SIZE,
+             "%.300s is gone (%s); put it back, or make an empty folder in its place", f->path,
+             sm_door_text(r));
+    return SM_EIO;
+}
+
 enum sm_status sm_folder_hold(struct sm_folder *f, char ret_why[SM_WHY_SIZE])
 {
     char lock[SM_FOLDER_SIZE + 8];
@@ -37,7 +53,7 @@ enum sm_status sm_folder_hold(struct sm_folder *f, char ret_why[SM_WHY_SIZE])
     snprintf(lock, sizeof lock, "%s/lock", f->path);
     if (still_the_same(f, lock))
         return SM_OK;
-    s = sm_make_folder(f->door, f->path, 0750, ret_why);
+    s = find_or_make(f, ret_why);
     if (s != SM_OK)
         return s;
     fd = f->door->open(f->door, lock, O_RDWR | O_CREAT, 0640);
@@ -115,6 +131,20 @@ static void path_of(const struct sm_folder *f, const char *name, const char *end
                     char out[SM_FOLDER_SIZE + SM_FILE_NAME_SIZE + 8])
 {
     snprintf(out, SM_FOLDER_SIZE + SM_FILE_NAME_SIZE + 8, "%s/%s%s", f->path, name, ending);
+}
+
+int sm_folder_has_file(const struct sm_folder *f, const char *name, int fd)
+{
+    char path[SM_FOLDER_SIZE + SM_FILE_NAME_SIZE + 8];
+    struct stat open, named;
+    int r = f->door->fstat(f->door, fd, &open);
+
+    path_of(f, name, "", path);
+    if (r >= 0)
+        r = f->door->stat(f->door, path, &named);
+    if (r < 0)
+        return r;
+    return open.st_dev == named.st_dev && open.st_ino == named.st_ino ? 0 : -ENOENT;
 }
 
 int sm_folder_begin_file(const struct sm_folder *f, const char *name)

@@ -22,8 +22,10 @@ void sm_folder_init(struct sm_folder *f, const struct sm_door *door, const char 
                     const char *meter);
 
 /* Makes the folder and holds its lock; again and again is fine (a folder that was taken away and
- * put back is held anew). SM_EBUSY  another daemon has it SM_EIO    it cannot be made or locked:
- * ret_why */
+ * put back, or replaced by another, is held anew). One that was held before and is gone is not made
+ * again: it may come back, or its disk may be missing.
+ *   SM_EBUSY  another daemon has it
+ *   SM_EIO    it cannot be made or locked, or is gone: ret_why */
 SM_MUST_CHECK enum sm_status sm_folder_hold(struct sm_folder *f, char ret_why[SM_WHY_SIZE]);
 void sm_folder_let_go(struct sm_folder *f);
 
@@ -57,6 +59,10 @@ void sm_beginning_destroy(struct sm_beginning *b);
 void sm_file_name(char out[SM_FILE_NAME_SIZE], int64_t ordinal, int64_t utc_us);
 /* Its ordinal; -1: no such name. */
 int64_t sm_file_ordinal(const char *name);
+
+/* Is the file that is open at fd the one that has this name? 0; -ENOENT: it was moved or deleted,
+ * or its folder was; another -errno. */
+int sm_folder_has_file(const struct sm_folder *f, const char *name, int fd);
 
 /* A new file lies beside its name, "NAME.new", until its first group is on disk: then it is shown
  * under its name. So a file always has a stamped `open`, and a disk that takes nothing is not

@@ -170,9 +170,14 @@ static int64_t age(struct sm_meter *m, const struct sm_now *now, const struct sm
     return ns;
 }
 
+static int64_t later(int64_t a, int64_t b)
+{
+    return a > b ? a : b;
+}
+
 void sm_meter_begin(struct sm_meter *m, const struct sm_now *now, struct sm_beginning *b)
 {
-    struct sm_entry_open o = { .how = "first" };
+    struct sm_entry_open o = { .how = m->missed.is ? "recovery" : "first" };
     const struct sm_sheet *sheet;
     char note_buf[4 * SM_WHY_SIZE];
     struct sm_text notes;
@@ -181,6 +186,10 @@ void sm_meter_begin(struct sm_meter *m, const struct sm_now *now, struct sm_begi
     note_missed(m, now, b, &notes);
     m->ordinal = b->ordinal;
     m->n = b->next_n - 1;
+    if (m->missed.is) { /* what was shown and is lost, or a folder that is another one now */
+        m->ordinal = later(m->ordinal, m->missed.ordinal + 1);
+        m->n = later(m->n, m->missed.n);
+    }
     m->trouble[0] = '\0';
     if (b->previous.has) {
         o.how = m->missed.is || !b->has_state || !b->state.closed ? "recovery" : "start";

@@ -67,6 +67,7 @@ struct sm_meter {
     struct {
         bool is;
         int64_t from_utc_us;
+        int64_t n, ordinal; /* the last that was used; of the last file on disk */
         uint64_t bytes;
         char first[SM_WHY_SIZE], why[SM_WHY_SIZE]; /* what began it; what it is now */
     } missed;

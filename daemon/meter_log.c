@@ -176,8 +176,10 @@ static void on_group(struct sm_meter *m, struct sm_done *d, const struct sm_now 
     if (d->epoch == m->epoch && m->log != LOG_FAILED && m->log != LOG_RECOVERING) {
         if (d->good)
             on_disk(m, d->group, now);
-        else
+        else {
+            m->missed.bytes += d->group->raw_bytes;
             sm_meter_fail(m, now, d->why);
+        }
     }
     sm_group_destroy(d->group);
 }
@@ -223,6 +225,8 @@ void sm_meter_fail(struct sm_meter *m, const struct sm_now *now, const char *why
     sm_text_copy(told, sizeof told, why); /* may be m->trouble */
     if (!m->missed.is) {
         m->missed.from_utc_us = now->utc_us;
+        m->missed.n = m->n;
+        m->missed.ordinal = m->disk.ordinal;
         sm_text_copy(m->missed.first, sizeof m->missed.first, told);
     }
     m->missed.is = true;

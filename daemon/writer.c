@@ -32,7 +32,8 @@ struct sm_writer {
     /* the thread's own */
     struct sm_folder *folder;
     int fd;                       /* -1: no file open */
-    char name[SM_FILE_NAME_SIZE]; /* of the file not shown yet; "" shown */
+    char file[SM_FILE_NAME_SIZE]; /* its name */
+    char name[SM_FILE_NAME_SIZE]; /* the same while it is not shown yet; "" shown */
     uint64_t bad_epoch;           /* this one has failed */
     char bad_why[SM_WHY_SIZE];
 };
@@ -86,10 +87,18 @@ static int write_group(struct sm_writer *w, const struct sm_group *g, const char
         if (w->fd < 0)
             return w->fd;
         snprintf(w->name, sizeof w->name, "%s", g->begins);
+        snprintf(w->file, sizeof w->file, "%s", g->begins);
     }
     *ret_what = "writing failed";
     if (w->fd < 0)
         return -EBADF;
+    if (g->begins[0] == '\0') {
+        *ret_what = "the file is not in its folder any more";
+        r = sm_folder_has_file(w->folder, w->file, w->fd);
+        if (r < 0)
+            return (int)r;
+        *ret_what = "writing failed";
+    }
     r = door->write(door, w->fd, g->text, g->n);
     if (r >= 0 && (size_t)r != g->n) {
         *ret_what = "only a part could be written";

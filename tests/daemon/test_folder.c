@@ -51,6 +51,13 @@ static void a_folder_is_held_by_one_and_held_anew_when_it_was_replaced(void **st
     assert_int_equal(sm_folder_hold(&one, why), SM_OK);
     snprintf(moved, sizeof moved, "%s/moved", s.path);
     assert_int_equal(rename(one.path, moved), 0);
+    assert_int_equal(sm_folder_hold(&one, why), SM_EIO); /* it may come back */
+    assert_non_null(strstr(why, "put it back"));
+    assert_int_equal(stat(one.path, &st), -1);
+    assert_int_equal(rename(moved, one.path), 0);
+    assert_int_equal(sm_folder_hold(&one, why), SM_OK);
+    assert_int_equal(rename(one.path, moved), 0);
+    assert_int_equal(mkdir(one.path, 0750), 0);
     assert_int_equal(sm_folder_hold(&one, why), SM_OK);
     assert_int_equal(sm_folder_hold(&two, why), SM_EBUSY); /* the new one is held too */
     sm_folder_let_go(&one);
@@ -89,6 +96,7 @@ static void the_newest_file_says_what_comes_next(void **state)
 {
     struct rig r;
     struct sm_beginning *b;
+    char path[256], name[4][80];
 
     (void)state;
     rig_make(&r, false);
@@ -96,7 +104,13 @@ static void the_newest_file_says_what_comes_next(void **state)
     rig_stop(&r);
     rig_remove(&r);
     make_logs(&r);
+    snprintf(path, sizeof path, "%s/000003_2026-12-01T081300Z.jsonl.new", r.folder);
+    scratch_write(path, "begun, never shown");
+    snprintf(path, sizeof path, "%s/of somebody else.new", r.folder);
+    scratch_write(path, "left alone");
     b = recover(&r);
+    assert_int_equal(scratch_list(r.folder, ".new", name, 4), 1);
+    assert_string_equal(name[0], "of somebody else.new");
     assert_int_equal(b->ordinal, 3);
     assert_true(b->previous.has);
     assert_int_equal(b->previous.ordinal, 2);

@@ -17,6 +17,7 @@
 #include <unistd.h>
 
 #include "daemon/scratch.h"
+#include "log_check.h"
 
 static const char *const files[][2] = {
     { "conf/profiles/mv.yaml", "eol: crlf\n"
@@ -112,6 +113,7 @@ void live_remove(struct live *l)
     for (size_t i = 0; i < l->n_meters; i++)
         sm_sim_pty_close(&l->pty[i]);
     free(l->in);
+    free(l->told);
     memcpy(s.path, l->path, sizeof s.path);
     scratch_remove(&s);
 }
@@ -306,6 +308,19 @@ static bool receive(struct live *l, int wait_ms)
     return true;
 }
 
+static void keep_if_announced(struct live *l, const char *line, size_t n)
+{
+    if (!log_check_held_back(line, n))
+        return;
+    if (l->told_cap - l->told_n < n) {
+        l->told_cap = 2 * l->told_cap + n + 65536;
+        l->told = realloc(l->told, l->told_cap);
+        assert_non_null(l->told);
+    }
+    memcpy(l->told + l->told_n, line, n);
+    l->told_n += n;
+}
+
 bool live_line(struct live *l, int wait_ms, const char **ret_line, size_t *ret_n)
 {
     const int64_t end_ns = live_now_ns() + (int64_t)wait_ms * 1000000;
@@ -319,6 +334,7 @@ bool live_line(struct live *l, int wait_ms, const char **ret_line, size_t *ret_n
             *ret_line = from;
             *ret_n = (size_t)(newline + 1 - from);
             l->at += *ret_n;
+            keep_if_announced(l, *ret_line, *ret_n);
             return true;
         }
         if (!receive(l, left_ns > 0 ? (int)((left_ns + 999999) / 1000000) : 0))

@@ -30,7 +30,10 @@ struct live {
     pid_t daemon; /* 0: not running */
     int client;   /* -1: not connected */
     int64_t from; /* follow from this entry on; -1 (default): the newest only */
-    char *in;     /* what came and was not taken yet: in[at, n) */
+    /* all that was announced so far and is only said once it is on disk, line after line */
+    char *told;
+    size_t told_n, told_cap;
+    char *in; /* what came and was not taken yet: in[at, n) */
     size_t at, n, cap;
 };
 

@@ -44,8 +44,6 @@ struct bench {
     struct sm_sim_prng prng;
     char what[64];
     unsigned kills, killed[PLANS];
-    char *told; /* announced lines, one after the other */
-    size_t told_n, told_cap;
     unsigned announced, captures, results, retried;
     int64_t seen; /* newest durable entry */
     bool all_measured;
@@ -56,18 +54,6 @@ struct bench {
 };
 
 /* ---- what the client is told ---- */
-
-static void keep(struct bench *b, const char *line, size_t n)
-{
-    if (b->told_cap - b->told_n < n) {
-        b->told_cap = 2 * b->told_cap + n + 65536;
-        b->told = realloc(b->told, b->told_cap);
-        assert_non_null(b->told);
-    }
-    memcpy(b->told + b->told_n, line, n);
-    b->told_n += n;
-    b->announced++;
-}
 
 /* The number after `key` in a line; 0: none. */
 static unsigned number_after(const char *line, size_t n, const char *key)
@@ -112,7 +98,7 @@ static bool take(struct bench *b, const char *line, size_t n)
         on_moved(b, line, n);
     if (!log_check_held_back(line, n))
         return false;
-    keep(b, line, n);
+    b->announced++;
     b->seen = h.n;
     b->captures += sm_head_is(&h, "capture");
     b->results += sm_head_is(&h, "result");
@@ -307,7 +293,7 @@ static void nothing_announced_is_lost_by_kill_9(void **state)
 
     live_folder(&b.live, 0, folder, sizeof folder);
     log_check_load(&c, folder, b.what);
-    log_check_has(&c, b.told, b.told_n, b.what);
+    log_check_has(&c, b.live.told, b.live.told_n, b.what);
     acts_were_done_once(&b, &c);
     replays(&b, &c);
     assert_true(c.last.closed);
@@ -323,7 +309,6 @@ static void nothing_announced_is_lost_by_kill_9(void **state)
            b.announced, b.captures, b.results, b.retried, b.last_id, c.n_files, c.n_lines,
            (long long)c.after_lines, c.n_unshown);
     log_check_free(&c);
-    free(b.told);
     live_remove(&b.live);
 }
 
