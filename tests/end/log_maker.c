@@ -114,9 +114,9 @@ static void stamp(struct log_maker *m, bool sign)
     sm_hasher_take(m->hasher, m->last_stamp);
     m->n++;
     if (sign)
-        assert_int_equal(sm_signer_sign(m->signer, m->core_setup->meter, m->ordinal, m->n,
-                                        m->last_stamp, sig),
-                         SM_OK);
+        assert_int_equal(
+            sm_signer_sign(m->signer, m->core_setup->meter, m->ordinal, m->n, m->last_stamp, sig),
+            SM_OK);
     sm_entry_stamp(&t, m->n, m->last_t_ns, m->last_utc_us, m->stamp_from, m->last_stamp,
                    sign ? sig : NULL);
     put(m, &t);

@@ -47,7 +47,7 @@ struct log_maker {
     char sheet_file[SM_NAME_SIZE];
     int64_t newest_durable_n;
     unsigned acts;
-    bool done; /* the latest act was */
+    bool done;                   /* the latest act was */
     char why[SM_LINK_TEXT_SIZE]; /* not done: why */
 
     struct sm_hasher *hasher;
