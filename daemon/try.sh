@@ -45,7 +45,7 @@ cp -r conf "$work/conf"
 sed -i "s|^port: .*|port: $work/meter|" "$work/conf/meters/try.yaml"
 sock=$work/socket
 
-$bin/stillmark-sim tests/sim/scenarios/try.scn --link "$work/meter" --wait --truth "$work/truth.csv" &
+$bin/stillmark-sim tests/sim/scenarios/try.scn --link "$work/meter" --wait --stay --events "$work/events.csv" --truth "$work/truth.csv" &
 sim=$!
 tries=0
 until [ -e "$work/meter" ]; do
@@ -75,8 +75,12 @@ $bin/stillmark analyst try --socket "$sock" || exit 2
 $bin/stillmark sheet "$work/conf/sheets/try.yaml" --socket "$sock" || exit 2
 $bin/stillmark watch --socket "$sock" &
 watch=$!
-wait $sim
-sim=
+tries=0
+until $bin/stillmark status --json --socket "$sock" 2>/dev/null | grep -q '"sheet_done":true'; do
+    tries=$((tries + 1))
+    [ $tries -gt 180 ] && { echo "The sheet was not done within three minutes." >&2; break; }
+    sleep 1
+done
 sleep 1
 kill $watch 2>/dev/null; wait $watch 2>/dev/null; watch=
 kill -TERM $daemon && wait $daemon
@@ -84,8 +88,14 @@ daemon=
 
 log=$(ls "$work"/logs/try/*.jsonl | tail -n 1)
 echo
-echo "The results, as the log has them:"
-$bin/stillmark export "$log" || exit 1
+echo "The results, as the log has them (the whole table: stillmark export, below):"
+$bin/stillmark export "$log" >"$work/results.csv" || exit 1
+tr -d '\r' <"$work/results.csv" | awk -F, '
+    NR == 1 { for (i = 1; i <= NF; i++) at[$i] = i
+              printf "  %-4s  %-14s  %-20s  %-11s  %s\n", "item", "sample", "result", "state", "temperature"
+              next }
+    { printf "  %-4s  %-14s  %-20s  %-11s  %.1f °C\n", $at["item"], $at["name"], $at["shown"], $at["state"],
+             $at["temperature (°C)"] }'
 echo
 echo "The log of it all:"
 echo "$log"
@@ -96,12 +106,13 @@ $bin/stillmark-replay "$log" || replayed=1
 cat <<T
 
 To look further:
+  $bin/stillmark export $log
   $bin/stillmark export $log --captures
   $bin/stillmark export $log --curve
   $bin/stillmark export $log --readings
   $bin/stillmark verify $log
   $bin/stillmark-replay $log
-  diff what was true: $work/truth.csv
+  less $work/truth.csv        (what the simulator knows to be true)
 Results are for information. They must not control a dosing pump.
 T
 [ $verified = 0 ] && [ $replayed = 0 ]
