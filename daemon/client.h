@@ -47,7 +47,7 @@ struct sm_hub {
     struct sm_hub_about about;
     char path[108];
     int fd;
-    struct event *accept, *sweep;
+    struct event *accept, *again, *sweep;
     struct client *clients;
     size_t n_clients;
     char *line; /* SM_ENTRY_MAX */

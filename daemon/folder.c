@@ -12,6 +12,8 @@
 #include "base/time.h"
 #include "keys.h"
 
+#define ORDINAL_MOST INT64_C(100000000000) /* no meter begins as many files */
+
 void sm_folder_init(struct sm_folder *f, const struct sm_door *door, const char *logs,
                     const char *meter)
 {
@@ -107,7 +109,7 @@ int64_t sm_file_ordinal(const char *name)
 
     if (digits < 6 || digits > 18 || name[digits] != '_' || n < digits + 8 ||
         strcmp(name + n - 6, ".jsonl") != 0 || strchr(name, '/') != NULL ||
-        sm_integer_parse(name, digits, &ordinal) != SM_OK)
+        sm_integer_parse(name, digits, &ordinal) != SM_OK || ordinal > ORDINAL_MOST)
         return -1;
     return ordinal;
 }

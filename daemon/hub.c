@@ -117,6 +117,27 @@ static void turn_away(int fd)
     close(fd);
 }
 
+/* Nothing is left for another connection: who waits would wake us again at once. */
+static void pause_accepting(struct sm_hub *h)
+{
+    static const struct timeval second = { 1, 0 };
+
+    if (!h->full_said)
+        sm_say(NULL, "no descriptor is left for another client of the control socket");
+    h->full_said = true;
+    event_del(h->accept);
+    event_add(h->again, &second);
+}
+
+static void on_again(evutil_socket_t fd, short what, void *arg)
+{
+    struct sm_hub *h = arg;
+
+    (void)fd;
+    (void)what;
+    event_add(h->accept, NULL);
+}
+
 static void on_accept(evutil_socket_t listener, short what, void *arg)
 {
     struct sm_hub *h = arg;
@@ -125,11 +146,11 @@ static void on_accept(evutil_socket_t listener, short what, void *arg)
 
     (void)what;
     if (fd < 0) {
-        if ((errno == EMFILE || errno == ENFILE) && !h->full_said)
-            sm_say(NULL, "no descriptor is left for another client of the control socket");
-        h->full_said = errno == EMFILE || errno == ENFILE;
+        if (errno == EMFILE || errno == ENFILE || errno == ENOMEM || errno == ENOBUFS)
+            pause_accepting(h);
         return;
     }
+    h->full_said = false;
     c = h->n_clients < SM_CLIENTS_MAX ? client_create(h, fd) : NULL;
     if (c == NULL) {
         turn_away(fd);
@@ -175,8 +196,9 @@ enum sm_status sm_hub_create(const struct sm_hub_about *about, const char *path,
         s = listen_on(h, path, ret_why);
     if (s == SM_OK) {
         h->sweep = event_new(about->base, -1, 0, on_sweep, h);
+        h->again = evtimer_new(about->base, on_again, h);
         h->accept = event_new(about->base, h->fd, EV_READ | EV_PERSIST, on_accept, h);
-        if (h->sweep == NULL || h->accept == NULL)
+        if (h->sweep == NULL || h->again == NULL || h->accept == NULL)
             s = SM_ENOMEM;
     }
     if (s != SM_OK) {
@@ -203,6 +225,8 @@ void sm_hub_destroy(struct sm_hub *h)
     }
     if (h->accept != NULL)
         event_free(h->accept);
+    if (h->again != NULL)
+        event_free(h->again);
     if (h->sweep != NULL)
         event_free(h->sweep);
     if (h->fd >= 0)
@@ -267,9 +291,11 @@ void sm_hub_lost(struct sm_hub *h, struct sm_meter *m, const char *why)
                 i++;
                 continue;
             }
-            snprintf(told, sizeof told,
-                     "not done: the log failed before the act was on disk (%s); look at the status",
-                     why);
+            snprintf(
+                told, sizeof told,
+                "the log failed before the act was known to be on disk (%s): it may or may not be "
+                "done; look at the status",
+                why);
             client_error(c, c->waiting[i].id, told);
             c->waiting[i] = c->waiting[--c->n_waiting];
         }

@@ -40,7 +40,7 @@ struct sm_loop {
     char socket_path[512];
     struct sm_hub *hub;
     struct sm_notify notify;
-    struct event *on_term, *on_int, *second;
+    struct event *on_term, *on_int, *on_hup, *second;
     struct bound bound[SM_METERS_MAX];
     struct sm_meter *meter[SM_METERS_MAX];
     size_t n;
@@ -308,10 +308,11 @@ static enum sm_status make_events(struct sm_loop *l)
 
     l->on_term = evsignal_new(l->base, SIGTERM, on_stop, l);
     l->on_int = evsignal_new(l->base, SIGINT, on_stop, l);
+    l->on_hup = evsignal_new(l->base, SIGHUP, on_stop, l); /* its terminal is closed */
     l->second = event_new(l->base, -1, EV_PERSIST, on_second, l);
-    if (l->on_term == NULL || l->on_int == NULL || l->second == NULL ||
+    if (l->on_term == NULL || l->on_int == NULL || l->on_hup == NULL || l->second == NULL ||
         event_add(l->on_term, NULL) != 0 || event_add(l->on_int, NULL) != 0 ||
-        event_add(l->second, &second) != 0)
+        event_add(l->on_hup, NULL) != 0 || event_add(l->second, &second) != 0)
         return SM_ENOMEM;
     return SM_OK;
 }
@@ -399,6 +400,7 @@ void sm_loop_destroy(struct sm_loop *l)
         free_event(l->bound[i].due);
     }
     free_event(l->second);
+    free_event(l->on_hup);
     free_event(l->on_int);
     free_event(l->on_term);
     sm_signer_destroy(l->signer);

@@ -17,7 +17,7 @@ SM_MUST_CHECK enum sm_status sm_loop_create(const struct sm_door *door,
                                             const struct sm_setup *setup, const char *socket_path,
                                             struct sm_loop **ret_loop, char ret_why[SM_WHY_SIZE]);
 
-/* Runs until SIGTERM or SIGINT, then closes every log.
+/* Runs until SIGTERM, SIGINT or SIGHUP, then closes every log.
  *   SM_EIO  a log was not closed well: ret_why */
 SM_MUST_CHECK enum sm_status sm_loop_run(struct sm_loop *l, char ret_why[SM_WHY_SIZE]);
 

@@ -18,6 +18,7 @@ static void names_give_the_order_whatever_the_clock_did(void **state)
                   { "000412_2026-12-01T081203Z.jsonl.new", -1 },
                   { "000412-2026-12-01T081203Z.jsonl", -1 },
                   { "99999999999999999999_x.jsonl", -1 },
+                  { "999999999999_x.jsonl", -1 },
                   { "lock", -1 },
                   { "", -1 } };
     char name[SM_FILE_NAME_SIZE];

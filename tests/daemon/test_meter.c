@@ -3,6 +3,8 @@
  * restarts, unplugging and a disk that fails. */
 #include "rig.h"
 
+#include <pthread.h>
+
 static const char sheet[] =
     "method: ph\nsensor: el-1\nitems:\n  - { standard: B4 }\n  - { check: C7 }\n"
     "  - { sample: final }\n";
@@ -177,14 +179,23 @@ static void a_restart_goes_on_where_the_last_stamp_was(void **state)
     rig_remove(&r);
 }
 
+static unsigned open_descriptors(void)
+{
+    char name[256][80];
+
+    return (unsigned)scratch_list("/proc/self/fd", "", name, COUNT(name));
+}
+
 static void a_lost_port_is_closed_at_once_and_comes_back(void **state)
 {
     struct rig r;
+    unsigned descriptors;
 
     (void)state;
     rig_make(&r, false);
     rig_start(&r);
-    for (int i = 0; i < 10; i++) {
+    descriptors = open_descriptors();
+    for (int i = 0; i < 50; i++) {
         const int watched = r.watched;
         rig_unplug(&r);
         sm_meter_readable(r.meter, &r.now);
@@ -199,6 +210,7 @@ static void a_lost_port_is_closed_at_once_and_comes_back(void **state)
         assert_true(r.watched >= 0);
         assert_int_equal(rig_count(r.told, "\"state\":\"up\""), i + 2);
     }
+    assert_int_equal(open_descriptors(), descriptors);
     rig_stop(&r);
     assert_int_equal(rig_verify(&r), 1);
     rig_remove(&r);
@@ -280,6 +292,74 @@ static void a_failed_sync_is_a_crash_of_the_meter_that_ends_by_itself(void **sta
         free(log);
         rig_remove(&r);
     }
+}
+
+static struct {
+    pthread_mutex_t lock;
+    pthread_cond_t wake;
+    bool hangs;
+} disk = { PTHREAD_MUTEX_INITIALIZER, PTHREAD_COND_INITIALIZER, false };
+
+static int hanging_sync(const struct sm_door *d, int fd)
+{
+    (void)d;
+    pthread_mutex_lock(&disk.lock);
+    while (disk.hangs)
+        pthread_cond_wait(&disk.wake, &disk.lock);
+    pthread_mutex_unlock(&disk.lock);
+    return sm_door_system()->fdatasync(sm_door_system(), fd);
+}
+
+static void let_disk(bool hang)
+{
+    pthread_mutex_lock(&disk.lock);
+    disk.hangs = hang;
+    pthread_cond_broadcast(&disk.wake);
+    pthread_mutex_unlock(&disk.lock);
+}
+
+static void a_disk_that_hangs_is_a_failure_after_ten_seconds_and_stalls_nothing(void **state)
+{
+    static const char line[] = "-0012.4 mV  24.8 C\r\n";
+    struct sm_act act = { .act = SM_ACT_NOTE, .id = "n1", .door = "socket", .text = "a note" };
+    char why[SM_WHY_SIZE];
+    struct rig r;
+    int64_t n;
+
+    (void)state;
+    rig_make(&r, false);
+    r.door.door.fdatasync = hanging_sync;
+    rig_start(&r);
+    rig_send(&r, line);
+    rig_pass(&r, 2 * SM_NS_PER_S);
+    let_disk(true);
+    assert_int_equal(sm_meter_act(r.meter, &r.now, &act, &n, why), SM_OK);
+    for (int i = 0; i < 99; i++) { /* it goes on reading */
+        r.now.boot_ns += SM_NS_PER_S / 10;
+        r.now.utc_us += 100000;
+        assert_int_equal(write(r.master, line, sizeof line - 1), sizeof line - 1);
+        sm_meter_readable(r.meter, &r.now);
+        sm_meter_written(r.meter, &r.now);
+    }
+    assert_int_equal(r.lost, 0);
+    assert_true(rig_count(r.live, "\"k\":\"reading\"") > 90);
+    r.now.boot_ns += SM_NS_PER_S;
+    sm_meter_wake(r.meter, &r.now);
+    assert_int_equal(r.lost, 1);
+    assert_non_null(strstr(r.lost_why, "10 s"));
+    assert_int_equal(r.answered, 0);
+    assert_int_equal(sm_meter_act(r.meter, &r.now, &act, &n, why), SM_EIO);
+    r.now.boot_ns += 3 * SM_NS_PER_S; /* the next attempt waits behind what hangs */
+    sm_meter_wake(r.meter, &r.now);
+    let_disk(false);
+    rig_settle(&r);
+    rig_pass(&r, 3 * SM_NS_PER_S);
+    assert_int_equal(r.answered, 0); /* on disk after all, but its sender was told otherwise */
+    assert_true(rig_act(&r, "note", "n2", "logged again") > 0);
+    rig_nothing_announced_is_lost(&r, "a disk that hung");
+    rig_stop(&r);
+    assert_int_equal(rig_verify(&r), 2);
+    rig_remove(&r);
 }
 
 /* A short session over midnight that touches all that the log's door does. */
@@ -400,6 +480,7 @@ int main(void)
         cmocka_unit_test(a_question_is_sent_whole_and_logged),
         cmocka_unit_test(the_wall_clock_set_back_is_said_and_changes_nothing_else),
         cmocka_unit_test(a_failed_sync_is_a_crash_of_the_meter_that_ends_by_itself),
+        cmocka_unit_test(a_disk_that_hangs_is_a_failure_after_ten_seconds_and_stalls_nothing),
         cmocka_unit_test(every_call_of_the_log_failed_in_turn_loses_nothing_announced),
         cmocka_unit_test(a_log_folder_taken_away_is_made_again),
         cmocka_unit_test(two_daemons_on_one_folder_are_told_apart),
