@@ -293,7 +293,8 @@ static bool receive(struct live *l, int wait_ms)
 
     if (l->client < 0 || poll(&p, 1, wait_ms) <= 0)
         return false;
-    memmove(l->in, l->in + l->at, l->n - l->at);
+    if (l->n > l->at)
+        memmove(l->in, l->in + l->at, l->n - l->at);
     l->n -= l->at;
     l->at = 0;
     if (l->cap - l->n < 65536) {
@@ -326,8 +327,8 @@ bool live_line(struct live *l, int wait_ms, const char **ret_line, size_t *ret_n
     const int64_t end_ns = live_now_ns() + (int64_t)wait_ms * 1000000;
 
     for (;;) {
-        const char *from = l->in + l->at;
-        const char *newline = l->n > l->at ? memchr(from, '\n', l->n - l->at) : NULL;
+        const char *from = l->n > l->at ? l->in + l->at : NULL; /* nothing came yet: no buffer */
+        const char *newline = from != NULL ? memchr(from, '\n', l->n - l->at) : NULL;
         const int64_t left_ns = end_ns - live_now_ns();
 
         if (newline != NULL) {
