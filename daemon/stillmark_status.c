@@ -47,11 +47,10 @@ void sm_status_print(const json_t *status)
 void sm_status_names(const json_t *list, char *ret_text, size_t cap)
 {
     struct sm_text t;
-    const json_t *one;
-    size_t i;
 
     sm_text_init(&t, ret_text, cap);
-    json_array_foreach(list, i, one) add(&t, i > 0 ? ", " : "", json_object_get(one, "meter"), "");
+    for (size_t i = 0; i < json_array_size(list); i++)
+        add(&t, i > 0 ? ", " : "", json_object_get(json_array_get(list, i), "meter"), "");
 }
 
 int sm_stillmark_status(int argc, char **argv)
@@ -61,9 +60,7 @@ int sm_stillmark_status(int argc, char **argv)
     struct sm_talk *talk = NULL;
     struct sm_words w;
     json_t *list = NULL;
-    const json_t *one;
     enum sm_status s;
-    size_t i;
 
     if (!sm_words_read(COMMAND, SM_WORDS_METER, argc, argv, &w))
         return SM_EXIT_COULD_NOT;
@@ -80,8 +77,8 @@ int sm_stillmark_status(int argc, char **argv)
         s = sm_talk_status(talk, w.meter, w.json, until_ns, &list, why);
     if (s != SM_OK)
         sm_say(COMMAND, "%s", why);
-    else if (!w.json)
-        json_array_foreach(list, i, one) sm_status_print(one);
+    for (size_t i = 0; !w.json && i < json_array_size(list); i++)
+        sm_status_print(json_array_get(list, i));
     json_decref(list);
     sm_talk_close(talk);
     return s == SM_OK ? SM_EXIT_DONE : SM_EXIT_COULD_NOT;

@@ -241,14 +241,13 @@ static bool begin(struct watch *w, char why[SM_TALK_WHY_SIZE])
     const int64_t until_ns = sm_talk_clock_ns() + SM_TALK_WAIT_NS;
     struct sm_talk *talk = NULL;
     json_t *list = NULL;
-    const json_t *one;
     bool good;
-    size_t i;
 
     good = sm_talk_open(w->words.socket, until_ns, &talk, why) == SM_OK &&
            sm_talk_status(talk, w->words.meter, false, until_ns, &list, why) == SM_OK;
     sm_talk_close(talk);
-    json_array_foreach(list, i, one) good = good && begin_one(w, &w->meter[i], one, why);
+    for (size_t i = 0; good && i < json_array_size(list); i++)
+        good = begin_one(w, &w->meter[i], json_array_get(list, i), why);
     json_decref(list);
     return good;
 }
