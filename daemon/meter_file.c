@@ -213,8 +213,7 @@ void sm_meter_begin(struct sm_meter *m, const struct sm_now *now, struct sm_begi
     begin_file(m, now, &o, sheet, &notes);
     if (m->core != NULL && m->has_link)
         sm_meter_feed_link(m, now, false);
-    if (notes.len > 0)
-        sm_say(m->name, "%s", note_buf);
+    sm_text_copy(m->begun_with, sizeof m->begun_with, note_buf);
 }
 
 void sm_meter_close_file(struct sm_meter *m, const struct sm_now *now, const char *why)

@@ -62,6 +62,7 @@ struct sm_meter {
     struct sm_meter_disk disk;
     char trouble[SM_WHY_SIZE]; /* found while feeding; "" none */
     bool closed_well, tried;
+    char begun_with[4 * SM_WHY_SIZE]; /* what the new file's `open` says was missed; "" nothing */
 
     /* what was missed since the log failed */
     struct {

@@ -141,8 +141,9 @@ static void on_disk(struct sm_meter *m, const struct sm_group *g, const struct s
         m->disk.ordinal = sm_file_ordinal(g->begins);
         m->disk.bytes = 0;
         snprintf(m->disk.path, sizeof m->disk.path, "%s/%s", m->folder.path, g->begins);
-        if (m->missed.is)
-            sm_say(m->name, "the log is written again");
+        if (m->missed.is || m->begun_with[0] != '\0')
+            sm_say(m->name, "a new log file is begun: %s", m->begun_with);
+        m->begun_with[0] = '\0';
         m->missed.is = false;
         m->missed.bytes = 0;
         if (m->log == LOG_BEGINNING)
