@@ -58,11 +58,11 @@ static void close_block(struct sm_blocks *b)
 
 /* Has the signal sped up in last[0]? */
 static bool sped_up(const struct sm_blocks *b, double tolerance, double step, double sd,
-                    double most_noise, struct sm_block_step *ret_step)
+                    struct sm_block_step *ret_step)
 {
     const double dt = fmin(apart_s(b, 0), 1e-9 * (double)b->most_ahead_ns);
     const double change = b->last[0].mean - b->last[1].mean;
-    const double noise = fmin(fmax(b->noise.sd, sd / sqrt(b->last[0].n)), most_noise);
+    const double noise = fmax(b->noise.sd, sd / sqrt(b->last[0].n));
     const double floor = fmax(tolerance, STEPS * step);
     const double more = fmax(floor, fmin(CERTAIN * noise, TOLERANCES * tolerance));
     double down = 0, up = 0;
@@ -85,7 +85,7 @@ static bool sped_up(const struct sm_blocks *b, double tolerance, double step, do
 }
 
 bool sm_blocks_add(struct sm_blocks *b, int64_t t_ns, double x, double tolerance, double step,
-                   double sd, double most_noise, struct sm_block_step *ret_step)
+                   double sd, struct sm_block_step *ret_step)
 {
     bool departed = false;
 
@@ -95,7 +95,7 @@ bool sm_blocks_add(struct sm_blocks *b, int64_t t_ns, double x, double tolerance
     }
     if (b->filled > 0 && (t_ns - b->origin_t_ns) / b->width_ns > b->at) {
         close_block(b);
-        if (b->n_last >= 3 && sped_up(b, tolerance, step, sd, most_noise, ret_step)) {
+        if (b->n_last >= 3 && sped_up(b, tolerance, step, sd, ret_step)) {
             ret_step->from_t_ns = b->origin_t_ns + b->at * b->width_ns;
             departed = true;
         }

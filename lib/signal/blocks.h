@@ -40,10 +40,10 @@ void sm_blocks_init(struct sm_blocks *b, int64_t width_ns, int64_t most_ahead_ns
 void sm_blocks_restart(struct sm_blocks *b);
 
 /* Takes a reading. True when a block was closed by it and lies outside what a settling signal,
- * which only slows down, may do. sd: of a reading; most_noise: more is not believed of block means.
+ * which only slows down, may do. sd: of a reading.
  */
 bool sm_blocks_add(struct sm_blocks *b, int64_t t_ns, double x, double tolerance, double step,
-                   double sd, double most_noise, struct sm_block_step *ret_step);
+                   double sd, struct sm_block_step *ret_step);
 
 /* Slope between the last two closed blocks. False: there are no two. */
 bool sm_blocks_slope(const struct sm_blocks *b, double *ret_u_per_s);

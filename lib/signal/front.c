@@ -14,7 +14,6 @@
 #define STRAY_MOST 3        /* more odd readings in a row are not stray */
 #define ODD_OF 16           /* of so many latest readings … */
 #define ODD_MOST 6          /* … so many odd ones are no accident, though each came back */
-#define STEADY_TIMES 3.0    /* more than this above the quietest noise is no noise of the meter */
 #define USUAL_WEIGHT 0.0625 /* of a new spacing in the usual one */
 #define SPACING_LEAST_S 1e-3
 
@@ -85,31 +84,12 @@ double sm_front_slope(const struct sm_front *f)
            spacing_s(f, f->last[SM_FRONT_LAST - 1].t_ns, f->last[0].t_ns);
 }
 
-/* The noise of a reading as far as it counts for departures. */
-static double noise_for_departures(const struct sm_front *f)
-{
-    return fmin(f->noise.sd, STEADY_TIMES * f->steady);
-}
-
-/* dt_s after the reading before. A noise that alone could not lift the threshold above the
- * tolerance is as good as none: the quietest is not taken below that. */
-static void keep_steady(struct sm_front *f, double dt_s, double tolerance)
-{
-    const double least = tolerance / (CERTAIN * STEADY_TIMES);
-    const double dwell_s = fmax(1e-9 * (double)f->pace.dwell_ns, SPACING_LEAST_S);
-
-    if (!f->noise.known)
-        return;
-    f->steady = f->steady > 0 ? f->steady * (1 + fmin(dt_s / dwell_s, 1)) : f->noise.sd;
-    f->steady = fmax(fmin(f->steady, f->noise.sd), least);
-}
-
 /* What noise may make of the difference of two readings; as much as can be while it is unknown. */
 static double noise_between(const struct sm_front *f, double tolerance)
 {
     const double most = TOLERANCES * tolerance;
 
-    return f->noise.known ? fmin(CERTAIN * noise_for_departures(f), most) : most;
+    return f->noise.known ? fmin(CERTAIN * f->noise.sd, most) : most;
 }
 
 /* A change from one reading to the next that is none of a signal at rest. The step may have been
@@ -159,7 +139,7 @@ static bool take(struct sm_front *f, const struct sm_signal_reading *r, double t
     assert(f->n_taken < SM_FRONT_ODD);
     f->taken[f->n_taken++] = *r;
     return sm_blocks_add(&f->blocks, r->t_ns, r->value, tolerance, sm_step_now(&f->step),
-                         noise_for_departures(f), STEADY_TIMES * f->steady, ret_step);
+                         f->noise.sd, ret_step);
 }
 
 /* What was kept back is no accident. It is read once more, now compared only with itself: a rinse
@@ -219,7 +199,6 @@ bool sm_front_reading(struct sm_front *f, const struct sm_signal_reading *r, dou
         const double usual_s = f->usual_dt_s > 0 ? f->usual_dt_s : dt_s;
 
         f->usual_dt_s = usual_s + USUAL_WEIGHT * (fmin(dt_s, 4 * usual_s) - usual_s);
-        keep_steady(f, dt_s, tolerance);
     }
     f->seen = true;
     f->seen_t_ns = r->t_ns;

@@ -37,7 +37,6 @@ struct sm_front {
     unsigned n_last;
     int64_t swift_t_ns; /* the latest that was taken only because the signal was swift before it: a
                          * departure may hide in its change; INT64_MIN: none */
-    double steady;      /* noise as it was when the signal was quietest of late, u */
     double usual_dt_s;  /* spacing of readings, smoothed */
     int64_t seen_t_ns;  /* the latest reading, odd or not */
     bool seen;

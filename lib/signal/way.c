@@ -292,6 +292,9 @@ void sm_way_look_back(struct sm_signal *s)
 
     if (s->where != SM_LEAVING || stay->n != 3 || !s->way.kept)
         return;
+    if (stay->first_t_ns <= s->way.kept_t_ns) /* the first of them was the departure: it was never
+                                               * away, it passes by */
+        return;
     least = largest = stay->first[0].value;
     for (unsigned i = 1; i < 3; i++) {
         least = fmin(least, stay->first[i].value);

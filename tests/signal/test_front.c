@@ -173,6 +173,28 @@ static void a_stirrer_that_makes_noise_is_got_used_to(void **state)
         fail_msg("%d departures, %d of 1000 taken", late.departures, late.taken);
 }
 
+static void where_restless_air_ends_is_seen(void **state)
+{
+    int seen_in = 0;
+
+    (void)state;
+    for (unsigned seed = 0; seed < 40; seed++) {
+        struct bench b = made_bench(seed);
+        struct seen before = { 0 }, after = { 0 };
+
+        begin(22);
+        for (int i = 0; i < 300; i++)
+            feed(&before, 0.1 * i, 50 + 0.05 * made_normal(&b), 0.01);
+        for (int i = 300; i < 340; i++)
+            feed(&before, 0.1 * i, 90 + 1.5 * made_normal(&b), 0.01);
+        for (int i = 340; i < 360; i++)
+            feed(&after, 0.1 * i, 110 + 0.05 * made_normal(&b), 0.01);
+        seen_in += before.departures > 0 && after.departures > 0;
+    }
+    if (seen_in < 38)
+        fail_msg("seen in %d of 40", seen_in);
+}
+
 int main(void)
 {
     const struct CMUnitTest tests[] = {
@@ -182,6 +204,7 @@ int main(void)
         cmocka_unit_test(odd_readings_for_less_than_a_second_are_stray_however_many),
         cmocka_unit_test(a_slow_start_that_single_readings_hide_is_seen_by_blocks),
         cmocka_unit_test(readings_that_jump_about_are_no_accident_though_each_comes_back),
+        cmocka_unit_test(where_restless_air_ends_is_seen),
         cmocka_unit_test(a_stirrer_that_makes_noise_is_got_used_to),
     };
 

@@ -316,6 +316,31 @@ static void before_a_capture_a_lift_that_comes_back_elsewhere_begins_a_new_immer
     finish(&b, "elsewhere", "moved:start, open, transit:open circuit, moved:transit, settled");
 }
 
+static void a_signal_that_only_passes_by_the_old_level_is_not_back(void **state)
+{
+    static const double by[] = { 60, 51.2, 50, 48.8, 40, 25, 12, 5 };
+    struct bench b = plain();
+
+    (void)state;
+    made_stay(&b, 50, 12);
+    made_stay(&b, 130, 5);
+    for (size_t i = 0; i < COUNT(by); i++)
+        made_stay(&b, by[i], 1);
+    made_stay(&b, 0, 60);
+    finish(&b, "passes by", "moved:start, transit:two departures, moved:transit, settled");
+}
+
+static void what_follows_within_a_moment_of_the_first_reading_belongs_to_it(void **state)
+{
+    struct bench b = plain();
+
+    (void)state;
+    b.rate = 5;
+    made_stay(&b, 50, 1);
+    made_stay(&b, 80, 60);
+    finish(&b, "start", "moved:start, settled");
+}
+
 static void a_lift_too_long_to_be_put_back_begins_a_new_immersion(void **state)
 {
     struct bench b = plain();
@@ -903,6 +928,8 @@ int main(void)
         cmocka_unit_test(after_the_dwell_a_lift_costs_no_time_because_the_old_window_goes_on),
         cmocka_unit_test(a_rinse_dipped_into_twice_is_not_a_stay),
         cmocka_unit_test(before_a_capture_a_lift_that_comes_back_elsewhere_begins_a_new_immersion),
+        cmocka_unit_test(a_signal_that_only_passes_by_the_old_level_is_not_back),
+        cmocka_unit_test(what_follows_within_a_moment_of_the_first_reading_belongs_to_it),
         cmocka_unit_test(a_lift_too_long_to_be_put_back_begins_a_new_immersion),
         cmocka_unit_test(an_immersion_left_unsettled_is_told_only_if_it_outlasted_the_dwell),
         cmocka_unit_test(air_and_rinses_make_one_way_with_one_end),
