@@ -92,4 +92,11 @@ struct sm_entry {
 SM_MUST_CHECK enum sm_status sm_entry_read(const char *line, size_t n, struct sm_entry_store *store,
                                            struct sm_entry *ret_entry,
                                            char ret_why[SM_REASON_SIZE]);
+
+/* The same, many times faster, for `bytes` without bad ones and for `tick`, in exactly the form in
+ * which they are written. True: as sm_entry_read would have it, but json is NULL, and of the input
+ * only what its kind uses is filled. False: anything else, also what is wrong: sm_entry_read is to
+ * be asked; *ret_entry is of no use. */
+bool sm_entry_read_quick(const char *line, size_t n, struct sm_entry_store *store,
+                         struct sm_entry *ret_entry);
 #endif

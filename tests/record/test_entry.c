@@ -348,6 +348,85 @@ static void lines_beyond_the_ceilings_are_refused(void **state)
     expect_refused("a", SM_ENTRY_MAX, "longer than 1 MiB");
 }
 
+/* The quick reader agrees with the thorough one on line[n], or leaves it to it. True: it took it.
+ */
+static bool quick_agrees(const char *line, size_t n)
+{
+    static struct sm_entry quick, thorough;
+    static struct sm_entry_store a, b;
+    char why[SM_REASON_SIZE];
+
+    if (!sm_entry_read_quick(line, n, &a, &quick))
+        return false;
+    if (sm_entry_read(line, n, &b, &thorough, why) != SM_OK)
+        fail_msg("read quickly, but refused: %s: %.*s", why, (int)n, line);
+    json_decref(thorough.json);
+    assert_int_equal(quick.kind, thorough.kind);
+    assert_string_equal(quick.k, thorough.k);
+    assert_int_equal(quick.n, thorough.n);
+    assert_int_equal(quick.t_ns, thorough.t_ns);
+    assert_int_equal(quick.utc_us, thorough.utc_us);
+    assert_int_equal(quick.passed_over, thorough.passed_over);
+    assert_null(quick.json);
+    assert_int_equal(quick.input.kind, thorough.input.kind);
+    assert_int_equal(quick.input.n, thorough.input.n);
+    assert_int_equal(quick.input.t_ns, thorough.input.t_ns);
+    assert_int_equal(quick.input.utc_us, thorough.input.utc_us);
+    if (quick.input.kind != SM_INPUT_BYTES)
+        return true;
+    assert_int_equal(quick.input.chunk.t_ns, thorough.input.chunk.t_ns);
+    assert_int_equal(quick.input.chunk.n, thorough.input.chunk.n);
+    assert_memory_equal(quick.input.chunk.bytes, thorough.input.chunk.bytes, quick.input.chunk.n);
+    assert_int_equal(quick.input.chunk.n_bad, thorough.input.chunk.n_bad);
+    return true;
+}
+
+static void the_quick_reader_agrees_with_the_thorough_one(void **state)
+{
+    static unsigned char bytes[SM_BYTES_MAX];
+    static char changed[8 * SM_BYTES_MAX];
+    struct sm_input in = {
+        .kind = SM_INPUT_TICK, .n = 7, .t_ns = 1746600000000, .utc_us = 1796114469600000
+    };
+    size_t n, taken = 0;
+
+    (void)state;
+    assert_true(quick_agrees(storage, line_of(&in)));
+    in.kind = SM_INPUT_BYTES;
+    in.chunk.bytes = bytes;
+    for (size_t i = 0; i < sizeof bytes; i++)
+        bytes[i] = (unsigned char)(i + i / 256);
+    for (in.chunk.n = 0; in.chunk.n <= 300; in.chunk.n++)
+        assert_true(quick_agrees(storage, line_of(&in)));
+    in.chunk.n = SM_BYTES_MAX;
+    assert_true(quick_agrees(storage, line_of(&in)));
+
+    /* any byte of a line changed to any other, and any one left out */
+    in.chunk.bytes = (const unsigned char *)"-1.4 \"\\\x80\r\n";
+    in.chunk.n = 11;
+    n = line_of(&in);
+    for (size_t at = 0; at < n; at++) {
+        for (int c = 0; c < 256; c++) {
+            memcpy(changed, storage, n);
+            changed[at] = (char)c;
+            taken += quick_agrees(changed, n);
+        }
+        memcpy(changed, storage, at);
+        memcpy(changed + at, storage + at + 1, n - at - 1);
+        taken += quick_agrees(changed, n - 1);
+    }
+    assert_true(taken > n); /* some changes leave an entry */
+    in.chunk.n = 0;
+    n = line_of(&in);
+    memcpy(changed, storage, n - 2);
+    for (size_t more = 0; more <= 2; more++) { /* a byte more than an entry may have */
+        const size_t len = n - 2 + SM_BYTES_MAX + more;
+        memset(changed + n - 2, 'x', SM_BYTES_MAX + more);
+        memcpy(changed + len, "\"}", 2);
+        assert_int_equal(quick_agrees(changed, len + 2), more == 0);
+    }
+}
+
 int main(void)
 {
     const struct CMUnitTest tests[] = {
@@ -357,6 +436,7 @@ int main(void)
         cmocka_unit_test(what_is_not_known_is_passed_over_and_counted),
         cmocka_unit_test(a_line_that_is_no_entry_is_refused_with_a_reason),
         cmocka_unit_test(lines_beyond_the_ceilings_are_refused),
+        cmocka_unit_test(the_quick_reader_agrees_with_the_thorough_one),
     };
 
     return cmocka_run_group_tests(tests, NULL, NULL);
