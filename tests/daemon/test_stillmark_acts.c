@@ -295,6 +295,26 @@ static void what_cannot_be_done_exits_2_in_one_line(void **state)
     }
 }
 
+static void a_line_without_end_is_not_waited_for(void **state)
+{
+    const size_t n = (size_t)3 * 1024 * 1024;
+    char *endless = malloc(n + 1);
+    struct fake_rule rules[] = { { "\"k\":\"status\"", endless, false }, { NULL, NULL, false } };
+    const int64_t from = sm_talk_clock_ns();
+    struct told t;
+
+    (void)state;
+    assert_non_null(endless);
+    memset(endless, 'x', n);
+    endless[n] = '\0';
+    t = tell(rules, SM_ACT_NEXT, NO_WORDS);
+    assert_int_equal(t.status, 2);
+    assert_non_null(strstr(t.err, "sends a line without end"));
+    assert_true(sm_talk_clock_ns() - from < SM_TALK_WAIT_NS);
+    forget(&t);
+    free(endless);
+}
+
 static void without_a_daemon_it_says_where_it_looked(void **state)
 {
     struct told t = tell(NULL, SM_ACT_NEXT, NO_WORDS);
@@ -500,6 +520,7 @@ int main(void)
         cmocka_unit_test(several_meters_and_none_named_exit_2_with_their_names),
         cmocka_unit_test(a_named_meter_is_the_one_asked_and_told),
         cmocka_unit_test(what_cannot_be_done_exits_2_in_one_line),
+        cmocka_unit_test(a_line_without_end_is_not_waited_for),
         cmocka_unit_test(without_a_daemon_it_says_where_it_looked),
         cmocka_unit_test(the_session_s_socket_is_found_where_no_other_is_named),
         cmocka_unit_test(an_answer_that_does_not_come_is_waited_for_no_longer_than_stated),
