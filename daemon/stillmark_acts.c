@@ -304,7 +304,7 @@ static void print_status(struct telling *t, const char *meter)
 
     if (sm_talk_status(t->talk, meter, false, t->until_ns, &list, why) != SM_OK)
         return; /* the act is done all the same */
-    sm_status_print(json_array_get(list, 0));
+    sm_status_print(json_array_get(list, 0), false);
     json_decref(list);
 }
 

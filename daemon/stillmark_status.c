@@ -28,7 +28,7 @@ static void add(struct sm_text *t, const char *before, const json_t *v, const ch
     sm_text_add(t, after);
 }
 
-void sm_status_print(const json_t *status)
+void sm_status_print(const json_t *status, bool method_note)
 {
     const json_t *missed = json_object_get(status, "not_logged");
     char buf[8192];
@@ -40,7 +40,8 @@ void sm_status_print(const json_t *status)
     sm_text_add(&t, "\n");
     add(&t, "  Not logged: ", json_object_get(missed, "why"), "\n");
     add(&t, "  Caution: ", json_object_get(status, "caution"), "\n");
-    add(&t, "  Method: ", json_object_get(status, "method_note"), "\n");
+    if (method_note)
+        add(&t, "  Method: ", json_object_get(status, "method_note"), "\n");
     fputs(buf, stdout);
 }
 
@@ -78,7 +79,7 @@ int sm_stillmark_status(int argc, char **argv)
     if (s != SM_OK)
         sm_say(COMMAND, "%s", why);
     for (size_t i = 0; !w.json && i < json_array_size(list); i++)
-        sm_status_print(json_array_get(list, i));
+        sm_status_print(json_array_get(list, i), true);
     json_decref(list);
     sm_talk_close(talk);
     return s == SM_OK ? SM_EXIT_DONE : SM_EXIT_COULD_NOT;

@@ -113,7 +113,7 @@ static void say_status(const struct watch *w, struct watched *m, const json_t *s
     read_step(status, next, caution);
     if (!m->greeted) {
         m->greeted = true;
-        sm_status_print(status);
+        sm_status_print(status, true);
         fflush(stdout);
     } else {
         if (is_new(next, m->next))
