@@ -392,7 +392,7 @@ bool sm_core_may_cut(const struct sm_core *c)
 
 bool sm_core_may_roll(const struct sm_core *c)
 {
-    return sm_core_may_cut(c) && !sm_signal_open(c->signal);
+    return sm_core_may_cut(c) && !sm_signal_open(c->signal) && !sm_signal_undecided(c->signal);
 }
 
 void sm_core_carried(const struct sm_core *c, struct sm_carried *ret_carried)

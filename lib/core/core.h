@@ -58,8 +58,8 @@ int64_t sm_core_deadline(const struct sm_core *c);
 /* The last number used, by an input or an event. */
 int64_t sm_core_last_n(const struct sm_core *c);
 
-/* The file may be changed now: no immersion open, no question to the meter open, at the end of a
- * line. */
+/* The file may be changed now: no immersion open and none about to end (every reading understood),
+ * no question to the meter open, at the end of a line. */
 bool sm_core_may_roll(const struct sm_core *c);
 /* The same, an immersion that is open apart. */
 bool sm_core_may_cut(const struct sm_core *c);

@@ -15,6 +15,11 @@
 void sm_noise_init(struct sm_noise *n, double before)
 {
     *n = (struct sm_noise){ .sd = before, .known = before > 0 };
+    if (!n->known)
+        return;
+    for (unsigned i = 0; i < SM_NOISE_KEPT; i++) /* as if it had been seen so often */
+        n->size[i] = before / MAD_TO_SD;
+    n->n = SM_NOISE_KEPT;
 }
 
 static double median(const double *v, unsigned n)

@@ -15,7 +15,8 @@ struct sm_noise {
     bool known; /* sd comes from readings, or from the memory of the channel */
 };
 
-/* before: the sd remembered of this channel; 0 = unknown. */
+/* before: the sd remembered of this channel, which weighs as much as if all that is kept had said
+ * so; 0 = unknown. */
 void sm_noise_init(struct sm_noise *n, double before);
 
 /* Three readings in a row, x the newest: x came dt after x1, x1 came dt1 after x2 (any unit, both

@@ -349,6 +349,11 @@ bool sm_signal_open(const struct sm_signal *s)
                                   : s->where == SM_LEAVING && s->way.kept;
 }
 
+bool sm_signal_undecided(const struct sm_signal *s)
+{
+    return s->front.n_odd > 0 || s->away.n > 0;
+}
+
 void sm_signal_place(const struct sm_signal *s, struct sm_signal_start *ret_start)
 {
     const struct sm_stay *stay = &s->stay[s->now];

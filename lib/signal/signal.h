@@ -147,6 +147,8 @@ void sm_signal_rest(struct sm_signal *s, bool rest);
 
 /* An immersion is open: begun, and not captured yet. */
 bool sm_signal_open(const struct sm_signal *s);
+/* Readings lie beside the course, and what they mean is not known yet: a stray one, a departure? */
+bool sm_signal_undecided(const struct sm_signal *s);
 /* Where the probe is now, as a start for the next file. */
 void sm_signal_place(const struct sm_signal *s, struct sm_signal_start *ret_start);
 void sm_signal_memory(const struct sm_signal *s, struct sm_channel_memory *ret_memory);

@@ -425,6 +425,13 @@ bool log_maker_step(struct log_maker *m, struct sm_sim *sim, int64_t until_ns)
         log_maker_until(m, sim, until_ns);
         return false;
     }
+    if (sim_due < m->now_ns) { /* from while the program was stopped */
+        char unheard[512];
+        int64_t t_ns;
+        size_t n;
+
+        return sm_sim_next(sim, &t_ns, unheard, sizeof unheard, &n) != SM_SIM_END;
+    }
     m->now_ns = sim_due;
     return sim_says(m, sim);
 }

@@ -85,6 +85,7 @@ struct count {
     unsigned beakers, stayed, captures, doubles,
         early; /* early: left before three times, captured */
     unsigned from_air, from_rinse, lost;
+    unsigned by_value; /* first captures whose immersion began without a transit seen */
     unsigned alike_rinse, alike_lost; /* cannot be told apart by their values: see below */
     struct family family[SM_SIM_RESPONSE_COUNT];
 };
@@ -95,6 +96,7 @@ struct watch {
     unsigned *kind; /* [truth->n] response of each beaker */
     double tolerance;
     uint64_t seed;
+    enum sm_mark_by by; /* of the latest `moved` */
     struct count *count;
 };
 
@@ -155,6 +157,8 @@ static void captured(struct watch *w, const struct log_maker *m, double value)
 
         if (w->got[at]++ > 0)
             w->count->doubles++;
+        else
+            w->count->by_value += w->by == SM_MOVED_VALUE;
         f->captures++;
         f->off += fabs(value - s->end) > w->tolerance;
     }
@@ -162,10 +166,14 @@ static void captured(struct watch *w, const struct log_maker *m, double value)
 
 static void on_event(void *arg, struct log_maker *m, const struct sm_event *e)
 {
+    struct watch *w = arg;
+
+    if (e->kind == SM_EVENT_MOVED)
+        w->by = e->u.moved.by;
     if (e->kind != SM_EVENT_CAPTURE)
         return;
     assert_true(e->u.capture.moved > 0); /* every capture follows a `moved` */
-    captured(arg, m, e->u.capture.value);
+    captured(w, m, e->u.capture.value);
 }
 
 static void draw(const struct series *s, uint64_t seed, struct sm_random_session *ret_r,
@@ -296,10 +304,11 @@ static void print_count(const struct series *s, unsigned sessions, const struct 
     print_message("  %s: seeds %llu to %llu, %u beakers, %u stayed three times\n", s->name,
                   (unsigned long long)s->first_seed,
                   (unsigned long long)(s->first_seed + sessions - 1), c->beakers, c->stayed);
-    print_message("    %u captures; twice in one beaker %u; in beakers left early %u; from air %u, "
+    print_message("    %u captures; by value, not transit %u; twice in one beaker %u; in beakers "
+                  "left early %u; from air %u, "
                   "from rinse %u, lost %u; not to be told apart: rinses %u, lost %u\n",
-                  c->captures, c->doubles, c->early, c->from_air, c->from_rinse, c->lost,
-                  c->alike_rinse, c->alike_lost);
+                  c->captures, c->by_value, c->doubles, c->early, c->from_air, c->from_rinse,
+                  c->lost, c->alike_rinse, c->alike_lost);
     print_message("    further from the end than the tolerance:");
     for (int k = 0; k < SM_SIM_RESPONSE_COUNT; k++) {
         const struct family *f = &c->family[k];

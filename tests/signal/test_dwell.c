@@ -147,12 +147,35 @@ static void a_swift_response_delays_the_dwell_until_it_has_slowed_down(void **st
     }
 }
 
+/* A file may not be changed while it is not known what the readings kept back are. */
+static void readings_beside_the_course_are_undecided_until_they_are_understood(void **state)
+{
+    struct bench b = plain();
+
+    (void)state;
+    beaker(&b, 0, 1);
+    assert_false(sm_signal_undecided(b.signal));
+    made_put(&b, 1, 50, SM_FLAG_OK);
+    assert_true(sm_signal_undecided(b.signal));
+    made_put(&b, 2, 0, SM_FLAG_OK); /* a stray one */
+    assert_false(sm_signal_undecided(b.signal));
+    made_put(&b, 3, 50, SM_FLAG_OK);
+    made_put(&b, 4, 50, SM_FLAG_OK);
+    made_put(&b, 5, 50, SM_FLAG_OK);
+    assert_true(sm_signal_undecided(b.signal));
+    assert_false(sm_signal_open(b.signal));
+    made_put(&b, 6, 50, SM_FLAG_OK); /* a departure: another immersion is open */
+    assert_true(sm_signal_open(b.signal));
+    sm_signal_destroy(b.signal);
+}
+
 int main(void)
 {
     const struct CMUnitTest tests[] = {
         cmocka_unit_test(
             a_rinse_shorter_than_the_dwell_is_not_captured_whatever_the_air_looked_like),
         cmocka_unit_test(what_stays_for_the_dwell_after_its_last_swift_change_is_captured),
+        cmocka_unit_test(readings_beside_the_course_are_undecided_until_they_are_understood),
         cmocka_unit_test(a_swift_response_delays_the_dwell_until_it_has_slowed_down),
     };
 
