@@ -28,6 +28,7 @@ struct run {
     char *made;                 /* [SM_ENTRY_MAX] an entry made now */
     struct sm_blame blame[BLAMES];
     size_t told_n;
+    int64_t later; /* by so much numbers are later than logged */
 };
 
 /* The next whole line, without its newline; false: none. Does not go past it. */
@@ -286,22 +287,43 @@ static void compare(struct run *r, const struct sm_event *e)
     differ(r, why, e->n);
 }
 
+/* A sheet as it was handed over. What it was refused for then is what the log says. */
+static void read_sheet(struct run *r, struct sm_act *act)
+{
+    char why[SM_LINK_TEXT_SIZE] = "";
+
+    if (parse_sheet(r, act->sheet_file, act->sheet_text, act->sheet_text_n, why) == SM_OK)
+        act->sheet = r->sheet;
+    else if (act->sheet_why[0] == '\0')
+        sm_text_copy(act->sheet_why, sizeof act->sheet_why, why);
+}
+
+/* Where more events came out than then, their numbers are taken: from here on all are later. What
+ * an act had seen is moved along. */
+static void renumber(struct run *r, struct sm_input *in)
+{
+    const int64_t past = sm_core_last_n(r->core) + 1 - (in->n + r->later);
+
+    if (past > 0)
+        r->later += past;
+    in->n += r->later;
+    in->act.seen += r->later;
+}
+
 static enum sm_status on_input(struct run *r)
 {
     struct sm_input *in = &r->entry->input;
     const struct sm_event *e;
 
     r->told->inputs++;
-    if (in->kind == SM_INPUT_ACT && in->act.act == SM_ACT_SHEET && in->act.sheet_text != NULL) {
-        if (parse_sheet(r, in->act.sheet_file, in->act.sheet_text, in->act.sheet_text_n,
-                        in->act.sheet_why) == SM_OK)
-            in->act.sheet = r->sheet;
-    }
+    if (in->kind == SM_INPUT_ACT && in->act.act == SM_ACT_SHEET && in->act.sheet_text != NULL)
+        read_sheet(r, &in->act);
     r->told->rolled = in->kind == SM_INPUT_ROLL;
     json_decref(r->entry->json);
     r->entry->json = NULL;
+    renumber(r, in);
     if (sm_core_feed(r->core, in) != SM_OK)
-        return fail(r, "the input cannot be fed: the events before it took other numbers");
+        return fail(r, "the input cannot be fed: it is out of number or of time");
     while (sm_core_next(r->core, &e)) {
         if (r->ask->event != NULL)
             r->ask->event(r->ask->event_arg, e, r->mine);

@@ -336,7 +336,7 @@ void log_maker_begin(struct log_maker *m, const char *setup_file, const char *me
     log_maker_open(m);
 }
 
-static void feed_act(struct log_maker *m, struct sm_input *in)
+void log_maker_feed_act(struct log_maker *m, struct sm_input *in)
 {
     snprintf(in->act.id, sizeof in->act.id, "made-%u", ++m->acts);
     in->act.has_seen = true;
@@ -353,7 +353,7 @@ void log_maker_act(struct log_maker *m, enum sm_act_kind act, const char *text)
     in.act.act = act;
     sm_text_copy(in.act.text, sizeof in.act.text, text);
     sm_text_copy(in.act.why, sizeof in.act.why, text);
-    feed_act(m, &in);
+    log_maker_feed_act(m, &in);
     if (!m->done)
         fail_msg("act %s refused: %s", sm_act_name(act), m->why);
 }
@@ -373,7 +373,7 @@ void log_maker_sheet(struct log_maker *m, const char *file, const char *text, si
         in.act.sheet = m->sheet;
     else
         sm_blame_write(&blames.list[0], in.act.sheet_why, sizeof in.act.sheet_why);
-    feed_act(m, &in);
+    log_maker_feed_act(m, &in);
     if (!m->done)
         fail_msg("sheet refused: %s", m->why);
     free(m->sheet_text);

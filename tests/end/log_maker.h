@@ -88,6 +88,8 @@ void log_maker_bytes(struct log_maker *m, const void *bytes, size_t n);
 void log_maker_link(struct log_maker *m, bool up, const char *why);
 /* An act by someone who has seen all; it must be done. */
 void log_maker_act(struct log_maker *m, enum sm_act_kind act, const char *text);
+/* Any act: done or not, m says. */
+void log_maker_feed_act(struct log_maker *m, struct sm_input *in);
 void log_maker_sheet(struct log_maker *m, const char *file, const char *text, size_t n);
 
 /* One more thing of the simulated meter, due at or before until_ns: true. False: nothing is left
