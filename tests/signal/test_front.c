@@ -195,6 +195,23 @@ static void where_restless_air_ends_is_seen(void **state)
         fail_msg("seen in %d of 40", seen_in);
 }
 
+static void what_is_far_noisier_than_the_tolerance_never_rests(void **state)
+{
+    static const double rates[] = { 1, 5 };
+
+    (void)state;
+    for (size_t r = 0; r < COUNT(rates); r++) {
+        struct bench b = made_bench(9);
+        struct seen seen = { 0 };
+
+        begin(22);
+        for (int i = 0; i < (int)(440 * rates[r]); i++) /* twenty dwells, 20 tolerances */
+            feed(&seen, i / rates[r], 50 + 12 * made_normal(&b), 0.01);
+        if (seen.departures < 20)
+            fail_msg("%g readings/s: %d departures in twenty dwells", rates[r], seen.departures);
+    }
+}
+
 int main(void)
 {
     const struct CMUnitTest tests[] = {
@@ -205,6 +222,7 @@ int main(void)
         cmocka_unit_test(a_slow_start_that_single_readings_hide_is_seen_by_blocks),
         cmocka_unit_test(readings_that_jump_about_are_no_accident_though_each_comes_back),
         cmocka_unit_test(where_restless_air_ends_is_seen),
+        cmocka_unit_test(what_is_far_noisier_than_the_tolerance_never_rests),
         cmocka_unit_test(a_stirrer_that_makes_noise_is_got_used_to),
     };
 

@@ -484,6 +484,7 @@ static void nonsense_gives_no_wrong_number(void **state)
         struct bench b = made_bench(seed);
         const struct sm_rule rule = made_rule(TOLERANCE, p->dwell_s * (seed % 5 != 0), p->over_s);
         const struct sm_channel_memory memory = { 0 };
+        struct sm_channel_memory after;
         const struct sm_signal_start start = { .place = SM_PLACE_LEFT };
         struct sm_signal *signal = NULL;
         int64_t t_ns = -made_ns(100);
@@ -507,6 +508,9 @@ static void nonsense_gives_no_wrong_number(void **state)
             if (sm_signal_deadline(signal) <= t_ns)
                 fail_msg("seed %u: a deadline that is past", seed);
         }
+        sm_signal_memory(signal, &after);
+        if (!isfinite(after.noise) || !isfinite(after.step))
+            fail_msg("seed %u: remembers noise %g, step %g", seed, after.noise, after.step);
         sm_signal_destroy(signal);
     }
     if (captures < 100) /* else nothing was tried */

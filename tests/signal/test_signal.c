@@ -471,9 +471,13 @@ static void without_a_tick_the_longest_wait_comes_with_the_next_reading(void **s
 static void a_mark_always_begins_an_immersion_and_no_reading_before_it_counts(void **state)
 {
     struct bench b = plain();
+    struct sm_rule rule = made_rule(0.6, 22, 20);
     const struct sm_signal_event *e;
 
     (void)state;
+    sm_signal_destroy(b.signal);
+    rule.tolerance[SM_CLASS_SAMPLE] = 0.7;
+    b.signal = made_signal(&rule);
     made_stay(&b, 50, 40);
     b.t_s += 0.5;
     mark(&b, SM_CLASS_SAMPLE, 7);
@@ -485,9 +489,45 @@ static void a_mark_always_begins_an_immersion_and_no_reading_before_it_counts(vo
     e = tape_get(&tape, SM_SIGNAL_SETTLED, 1);
     check_ns("the dwell counts from the mark", e->t_ns, 63);
     assert_int_equal(e->clock, 7);
+    check_close("tolerance of the marked item", e->settled.tolerance, 0.7, 0);
     if (e->settled.from_t_ns < made_ns(40.5))
         fail_msg("a reading from before the mark is in the window");
     finish(&b, "mark", "moved:start, settled, moved:mark, settled");
+}
+
+static void nothing_moves_before_a_mark_that_came_in_between(void **state)
+{
+    (void)state;
+    for (double at_s = 0.3; at_s < 4; at_s += 0.3) {
+        struct bench b = plain();
+        bool marked = false;
+
+        b.rate = 10;
+        made_stay(&b, 50, 40);
+        for (int i = 0; i < 60; i++) { /* a slow start, seen by blocks that began before the mark */
+            const double t_s = b.t_s - 40;
+
+            if (!marked && t_s > at_s) {
+                mark(&b, SM_CLASS_SAMPLE, 0);
+                marked = true;
+            }
+            made_stay(&b, 50 + 0.5 * t_s * t_s, 0.1);
+        }
+        marked = false;
+        for (size_t i = 0; i < tape.n; i++) {
+            const struct sm_signal_event *e = &tape.event[i];
+            static int64_t mark_t_ns;
+
+            if (e->kind == SM_SIGNAL_MOVED && e->by == SM_MOVED_MARK) {
+                marked = true;
+                mark_t_ns = e->t_ns;
+            } else if (e->kind == SM_SIGNAL_MOVED && marked && e->from_t_ns < mark_t_ns) {
+                fail_msg("mark %.1f s after the start: moved before it", at_s);
+            }
+        }
+        assert_true(marked);
+        sm_signal_destroy(b.signal);
+    }
 }
 
 static void odd_readings_from_before_a_mark_do_not_count_after_it(void **state)
@@ -814,6 +854,22 @@ static void what_cannot_be_fed_changes_nothing(void **state)
     sm_signal_destroy(b.signal);
 }
 
+static void a_value_beyond_any_meter_is_an_open_circuit_and_leaves_no_trace(void **state)
+{
+    struct bench b = plain();
+    struct sm_channel_memory memory;
+
+    (void)state;
+    b.step = 0;
+    made_stay(&b, 50, 40);
+    for (int i = 0; i < 40; i++)
+        made_put(&b, b.t_s += 1, i % 2 ? 1.7e308 : -1.7e308, SM_FLAG_OK);
+    sm_signal_memory(b.signal, &memory);
+    check_close("noise", memory.noise, 0, 1e-12);
+    check_close("step", memory.step, 0, 1e-12);
+    finish(&b, "huge", "moved:start, settled, open");
+}
+
 static void a_rule_out_of_range_or_not_built_makes_no_signal(void **state)
 {
     const struct sm_channel_memory memory = { 0 };
@@ -938,6 +994,7 @@ int main(void)
         cmocka_unit_test(the_longest_wait_is_told_once_and_then_nothing_is_captured),
         cmocka_unit_test(without_a_tick_the_longest_wait_comes_with_the_next_reading),
         cmocka_unit_test(a_mark_always_begins_an_immersion_and_no_reading_before_it_counts),
+        cmocka_unit_test(nothing_moves_before_a_mark_that_came_in_between),
         cmocka_unit_test(odd_readings_from_before_a_mark_do_not_count_after_it),
         cmocka_unit_test(
             a_mark_while_the_old_signal_still_settles_waits_for_the_dwell_and_the_rule),
@@ -956,6 +1013,7 @@ int main(void)
         cmocka_unit_test(every_reading_counts_however_fast_the_meter_sends),
         cmocka_unit_test(settling_is_told_at_most_four_times_a_second),
         cmocka_unit_test(what_cannot_be_fed_changes_nothing),
+        cmocka_unit_test(a_value_beyond_any_meter_is_an_open_circuit_and_leaves_no_trace),
         cmocka_unit_test(a_rule_out_of_range_or_not_built_makes_no_signal),
         cmocka_unit_test(only_what_is_built_says_so),
         cmocka_unit_test(the_channel_remembers_noise_step_and_usual_wait),
