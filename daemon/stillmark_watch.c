@@ -34,10 +34,11 @@ static const char HELP[] =
 struct watched {
     char meter[SM_METER_SIZE];
     struct sm_talk *talk;
-    bool greeted; /* the first status was said */
-    bool asked;   /* a status is on its way */
-    bool raw;     /* "not logged" was said and nothing was logged since */
-    bool results; /* the caution of results was said */
+    bool greeted;        /* the first status was said */
+    bool asked;          /* a status is on its way */
+    bool raw;            /* "not logged" was said and nothing was logged since */
+    bool results;        /* the caution of results was said */
+    json_int_t moved_to; /* item that the probe was last said to be in; 0: none since its capture */
     char next[NEXT_SIZE], caution[CAUTION_SIZE]; /* of the last status */
 };
 
@@ -159,6 +160,25 @@ static void say_purpose(const struct watch *w, struct watched *m, const json_t *
     print(w, m, o, "Results are for information. They must not control a dosing pump.");
 }
 
+/* On its way: a probe that leaves a beaker changes the value first (were it to stay so, the capture
+ * and its question say it), and air and rinse move it more than once into the same item. */
+static bool is_on_the_way(struct watched *m, const json_t *o)
+{
+    const json_t *by = json_object_get(o, "by");
+    const json_int_t item = json_integer_value(json_object_get(o, "item"));
+
+    if (sm_talk_is(o, "capture"))
+        m->moved_to = 0;
+    if (!sm_talk_is(o, "moved"))
+        return false;
+    if (json_is_string(by) && strcmp(json_string_value(by), "value") == 0)
+        return true;
+    if (item != 0 && item == m->moved_to)
+        return true;
+    m->moved_to = item;
+    return false;
+}
+
 static void say_entry(const struct watch *w, struct watched *m, const json_t *o)
 {
     const bool raw = sm_talk_is(o, "raw");
@@ -167,7 +187,7 @@ static void say_entry(const struct watch *w, struct watched *m, const json_t *o)
 
     if (sm_talk_is(o, "answer") && json_is_true(json_object_get(o, "done")))
         return; /* its act was said */
-    if (raw && m->raw)
+    if ((raw && m->raw) || is_on_the_way(m, o))
         return;
     sm_text_init(&t, buf, sizeof buf);
     if (!sm_entry_sentence(o, &t))
