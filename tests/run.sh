@@ -6,7 +6,7 @@ set -u
 cd "$(dirname "$0")/.." || exit 2
 sh daemon/try.sh --deps || exit 2
 
-packages="clang libclang-rt-14-dev clang-format clang-tidy cppcheck valgrind openssl tmux procps man-db"
+packages="clang libclang-rt-14-dev clang-format clang-tidy cppcheck valgrind openssl tmux procps man-db groff systemd strace"
 missing=
 for p in $packages; do
     dpkg-query -W -f '${Status}' "$p" 2>/dev/null | grep -q 'ok installed' || missing="$missing $p"
@@ -76,6 +76,8 @@ echo "== lint =="
     sh tests/lint.sh build
     sh tests/lint.sh build tidy
     sh tests/lint_proof.sh
+    sh tests/unit.sh build
+    sh tests/manual.sh build
 } >build/lint.log 2>&1
 grep -v '^ok ' build/lint.log | head -n 60
 count lint "$(grep -c '^ok ' build/lint.log)" "$(grep -c '^FAILED ' build/lint.log)"
