@@ -249,7 +249,7 @@ static bool try_connect(struct live *l)
     l->client = fd;
     l->at = l->n = 0;
     snprintf(from, sizeof from, ",\"from\":%lld", (long long)l->from);
-    snprintf(follow, sizeof follow, "{\"k\":\"follow\",\"meter\":\"m1\"%s}",
+    snprintf(follow, sizeof follow, "{\"k\":\"follow\",\"meter\":\"m%zu\"%s}", l->follow + 1,
              l->from >= 0 ? from : "");
     live_request(l, follow);
     return true;

@@ -27,9 +27,10 @@ struct live {
     char socket[96];
     size_t n_meters;
     struct sm_sim_pty pty[LIVE_METERS];
-    pid_t daemon; /* 0: not running */
-    int client;   /* -1: not connected */
-    int64_t from; /* follow from this entry on; -1 (default): the newest only */
+    pid_t daemon;  /* 0: not running */
+    int client;    /* -1: not connected */
+    size_t follow; /* which meter it follows: 0 (default) is m1 */
+    int64_t from;  /* follow from this entry on; -1 (default): the newest only */
     /* all that was announced so far and is only said once it is on disk, line after line */
     char *told;
     size_t told_n, told_cap;
