@@ -63,6 +63,12 @@ struct sm_maybe {
     double value;
 };
 
+/* When it is told: an open circuit, and a first departure after a capture (moved by value), at once. A
+ * transit, with the moved that ends it, when the new place has been calm for a quarter of the dwell (2 s
+ * at most), so that air and rinses make few ways. Where a lift out of an uncaptured immersion may
+ * yet come back (half the dwell, 10 s at most) nothing is told before that is decided: then either
+ * a transit with `returned` alone, or not-settled (if it outlasted the dwell), transit and moved. A lift
+ * out of an immersion younger than the dwell starts the dwell again: it may be a rinse dipped twice. */
 enum sm_signal_kind {
     SM_SIGNAL_MOVED,       /* a new immersion */
     SM_SIGNAL_TRANSIT,     /* the way between two, or a lift (`returned`) */
@@ -95,8 +101,8 @@ struct sm_signal_event {
     enum sm_signal_kind kind;
     int64_t t_ns;       /* of the input that brought it out */
     enum sm_mark_by by; /* MOVED */
-    int64_t from_t_ns;  /* MOVED: when the immersion began; TRANSIT: when the way began */
-    int64_t to_t_ns;    /* TRANSIT: when it was over */
+    int64_t from_t_ns;  /* MOVED, NOT_SETTLED: when the immersion began; TRANSIT: when the way began */
+    int64_t to_t_ns;    /* TRANSIT, NOT_SETTLED: when it was over */
     enum sm_transit_how how; /* TRANSIT */
     bool returned;           /* TRANSIT: came back alike before a capture: the immersion goes on */
     unsigned clock;          /* of the mark, 0 … 31 */
