@@ -5,6 +5,7 @@
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
+#include <unistd.h>
 
 #include "record/arithmetic.h"
 #include "source_disk.h"
@@ -15,18 +16,19 @@
 #define SIGN_NS (14 * 60 * SM_NS_PER_S)
 #define BLAMES 8
 
+/* By its name from the source tree, so that a log does not depend on where that lies. */
 static void load_setup(struct log_maker *m, const char *setup_file, const char *meter)
 {
-    char path[1024], line[1024];
+    char line[1024];
     struct sm_disk disk;
     struct sm_source source;
     struct sm_blame list[BLAMES];
     struct sm_blames blames;
 
-    snprintf(path, sizeof path, "%s/%s", SM_SOURCE_DIR, setup_file);
-    sm_source_disk(&disk, path, &source);
+    assert_int_equal(chdir(SM_SOURCE_DIR), 0);
+    sm_source_disk(&disk, setup_file, &source);
     sm_blames_init(&blames, list, BLAMES);
-    if (sm_setup_load(&source, path, &m->setup, &blames) != SM_OK) {
+    if (sm_setup_load(&source, setup_file, &m->setup, &blames) != SM_OK) {
         sm_blame_write(&blames.list[0], line, sizeof line);
         fail_msg("%s: %s", setup_file, blames.n > 0 ? line : "cannot be read");
     }
