@@ -80,7 +80,7 @@ static enum sm_status list(void *ctx, const char *folder, void (*each)(void *arg
                            void *arg)
 {
     const struct sm_logged *l = ctx;
-    const char *names[SM_SETUP_FILES_MAX];
+    const char *names[SM_SETUP_FILES_MAX] = { NULL };
     const size_t f = strlen(folder);
     size_t n = 0;
 

@@ -24,7 +24,7 @@ void sm_noise_init(struct sm_noise *n, double before)
 
 static double median(const double *v, unsigned n)
 {
-    double s[SM_NOISE_KEPT];
+    double s[SM_NOISE_KEPT] = { 0 };
 
     for (unsigned i = 0; i < n; i++) {
         unsigned k = i;
