@@ -27,12 +27,13 @@
 enum plan {
     WHILE_STARTING,
     AT_AN_ANNOUNCEMENT, /* the moment the client has it */
+    AMONG_ACTS,         /* many were sent just now */
     SOON,
     LATE, /* long enough for captures */
     PLANS
 };
-static const char *const plan_names[PLANS] = { "while starting", "at an announcement", "soon",
-                                               "late" };
+static const char *const plan_names[PLANS] = { "while starting", "at an announcement", "among acts",
+                                               "soon", "late" };
 
 struct pending { /* an act that is not answered yet; sent again to the next daemon */
     unsigned id; /* 0: free */
@@ -200,11 +201,22 @@ static void live_until(struct bench *b, int64_t end_ns, int announcements)
     }
 }
 
+/* As many notes as may wait, and then a moment. */
+static void burst(struct bench *b, int64_t end_ns)
+{
+    live_until(b, end_ns, between(b, 2, 20));
+    for (int i = 0; i < PENDING && b->live.client >= 0; i++)
+        act(b, "\"act\":\"note\",\"text\":\"one of many\"");
+    if (between(b, 0, 2) > 0)
+        live_sleep_ms(between(b, 0, 2));
+}
+
 static void one_life(struct bench *b)
 {
     const int dice = between(b, 0, 99);
     const enum plan plan = dice < 10   ? WHILE_STARTING
-                           : dice < 35 ? AT_AN_ANNOUNCEMENT
+                           : dice < 30 ? AT_AN_ANNOUNCEMENT
+                           : dice < 45 ? AMONG_ACTS
                            : dice < 65 ? SOON
                                        : LATE;
     const int64_t begin_ns = live_now_ns();
@@ -216,6 +228,8 @@ static void one_life(struct bench *b)
         live_until(b, begin_ns + between(b, 0, 25) * MS, 0);
     else if (plan == AT_AN_ANNOUNCEMENT)
         live_until(b, begin_ns + 5000 * MS, between(b, 1, 60));
+    else if (plan == AMONG_ACTS)
+        burst(b, begin_ns + 5000 * MS);
     else if (plan == SOON)
         live_until(b, begin_ns + between(b, 50, 400) * MS, 0);
     else
