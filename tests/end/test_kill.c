@@ -266,12 +266,18 @@ static void acts_were_done_once(const struct bench *b, const struct log_check *c
     free(done);
 }
 
-static void replays(const struct bench *b, const struct log_check *c)
+/* By the programs that an analyst would use. */
+static void verifies_and_replays(const struct bench *b, const struct log_check *c,
+                                 const char *folder)
 {
+    const char *const verify[] = { "stillmark", "verify", folder, NULL };
     const char **argv = calloc(c->n_files + 2, sizeof *argv);
     static char said[1 << 20];
     int status;
 
+    status = live_run(&b->live, verify, said, sizeof said);
+    if (status != 0)
+        fail_msg("%s: verify gave %d:\n%s", b->what, status, said);
     assert_non_null(argv);
     argv[0] = "stillmark-replay";
     for (size_t i = 0; i < c->n_files; i++)
@@ -309,7 +315,7 @@ static void nothing_announced_is_lost_by_kill_9(void **state)
     log_check_load(&c, folder, b.what);
     log_check_has(&c, b.live.told, b.live.told_n, b.what);
     acts_were_done_once(&b, &c);
-    replays(&b, &c);
+    verifies_and_replays(&b, &c, folder);
     assert_true(c.last.closed);
     if (b.announced < 5 * b.kills || (arg_kills >= 40 && (b.captures == 0 || b.retried == 0)))
         fail_msg("%s: too little load: %u announced, %u captures, %u acts sent again", b.what,
