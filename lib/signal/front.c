@@ -14,6 +14,7 @@
 #define STRAY_MOST 3        /* more odd readings in a row are not stray */
 #define ODD_OF 16           /* of so many latest readings … */
 #define ODD_MOST 6          /* … so many odd ones are no accident, though each came back */
+#define QUIET_TIMES 3.0     /* more than this above the quietest is not believed at once */
 #define USUAL_WEIGHT 0.0625 /* of a new spacing in the usual one */
 #define SPACING_LEAST_S 1e-3
 
@@ -84,12 +85,35 @@ double sm_front_slope(const struct sm_front *f)
            spacing_s(f, f->last[SM_FRONT_LAST - 1].t_ns, f->last[0].t_ns);
 }
 
+/* dt_s after the reading before: the noise when the signal was quietest of late, forgotten slowly,
+ * so that a noise that came to stay is believed after two or three dwells. A noise too small to
+ * matter is taken as the largest that does not. */
+static void keep_quiet(struct sm_front *f, double dt_s, double tolerance)
+{
+    const double dwell_s = fmax(1e-9 * (double)f->pace.dwell_ns, SPACING_LEAST_S);
+    const double least = tolerance / (CERTAIN * QUIET_TIMES);
+
+    if (!f->noise.known)
+        return;
+    if (f->quiet > 0)
+        f->quiet = fmin(f->quiet * (1 + fmin(dt_s / dwell_s, 1)), f->noise.sd);
+    else
+        f->quiet = f->noise.sd;
+    f->quiet = fmax(f->quiet, least);
+}
+
+/* Restless air is no noise of the meter: the noise as far as it is believed. */
+static double quiet_sd(const struct sm_front *f)
+{
+    return fmin(f->noise.sd, QUIET_TIMES * f->quiet);
+}
+
 /* What noise may make of the difference of two readings; as much as can be while it is unknown. */
-static double noise_between(const struct sm_front *f, double tolerance)
+static double noise_between(const struct sm_front *f, double sd, double tolerance)
 {
     const double most = TOLERANCES * tolerance;
 
-    return f->noise.known ? fmin(CERTAIN * f->noise.sd, most) : most;
+    return f->noise.known ? fmin(CERTAIN * sd, most) : most;
 }
 
 /* A change from one reading to the next that is none of a signal at rest. The step may have been
@@ -98,14 +122,14 @@ static bool is_swift(const struct sm_front *f, double change, double tolerance)
 {
     const double steps = STEPS * fmin(sm_step_now(&f->step), tolerance);
 
-    return fabs(change) > fmax(fmax(tolerance, steps), noise_between(f, tolerance));
+    return fabs(change) > fmax(fmax(tolerance, steps), noise_between(f, quiet_sd(f), tolerance));
 }
 
 /* Further from the last accepted reading than a signal that slows down can be? */
 static bool is_odd(const struct sm_front *f, const struct sm_signal_reading *r, double tolerance)
 {
-    const double more =
-        fmax(fmax(tolerance, STEPS * sm_step_now(&f->step)), noise_between(f, tolerance));
+    const double more = fmax(fmax(tolerance, STEPS * sm_step_now(&f->step)),
+                             noise_between(f, f->noise.sd, tolerance));
     double down = 0, up = 0, ahead_s, change;
 
     if (f->n_last < 2)
@@ -163,7 +187,7 @@ static void depart(struct sm_front *f, double tolerance, struct sm_departure *re
     for (size_t i = 2; i < n; i++)
         learn(f, f->odd[i].t_ns, f->odd[i].value, f->odd[i - 1].t_ns, f->odd[i - 1].value,
               f->odd[i - 2].t_ns, f->odd[i - 2].value);
-    ret_departure->alike = CERTAIN * fmin(f->noise.sd, tolerance);
+    ret_departure->alike = CERTAIN * fmin(quiet_sd(f), tolerance);
     sm_front_forget(f);
     for (size_t i = 0; i < n; i++) {
         if (is_odd(f, &f->odd[i], tolerance)) {
@@ -199,6 +223,7 @@ bool sm_front_reading(struct sm_front *f, const struct sm_signal_reading *r, dou
         const double usual_s = f->usual_dt_s > 0 ? f->usual_dt_s : dt_s;
 
         f->usual_dt_s = usual_s + USUAL_WEIGHT * (fmin(dt_s, 4 * usual_s) - usual_s);
+        keep_quiet(f, dt_s, tolerance);
     }
     f->seen = true;
     f->seen_t_ns = r->t_ns;

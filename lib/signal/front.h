@@ -35,6 +35,7 @@ struct sm_front {
         double x;
     } last[SM_FRONT_LAST]; /* accepted ones, the newest first */
     unsigned n_last;
+    double quiet;       /* noise of a reading when the signal was quietest of late, u; 0 unknown */
     int64_t swift_t_ns; /* the latest that was taken only because the signal was swift before it: a
                          * departure may hide in its change; INT64_MIN: none */
     double usual_dt_s;  /* spacing of readings, smoothed */

@@ -88,6 +88,8 @@ void sm_way_open(struct sm_signal *s, int64_t t_ns, enum sm_transit_how how);
 void sm_way_arrived(struct sm_signal *s, int64_t t_ns);
 /* The third reading after an open circuit: back where it was? */
 void sm_way_look_back(struct sm_signal *s);
+/* A reading of the stay: after a lift, still where it was? */
+void sm_way_look_on(struct sm_signal *s, const struct sm_signal_reading *r);
 /* Tells the way that is over by t_ns. */
 void sm_way_tell(struct sm_signal *s, int64_t t_ns);
 void sm_way_mark(struct sm_signal *s, int64_t t_ns);

@@ -173,6 +173,7 @@ static void add(struct sm_signal *s, const struct sm_signal_reading *r)
     sm_stay_add(sm_stay_now(s), r, sm_judge_over_ns(&s->rule));
     if (s->front.swift_t_ns == r->t_ns)
         sm_stay_now(s)->swift_t_ns = r->t_ns;
+    sm_way_look_on(s, r);
     sm_way_look_back(s);
 }
 

@@ -20,6 +20,8 @@ void sm_stay_begin(struct sm_stay *s, int64_t t_ns, int64_t bin_ns)
     s->way_open = false;
     s->way_how = SM_TRANSIT_DEPARTURES;
     s->lifts = 0;
+    s->lift_t_ns = 0;
+    s->lift_level = 0;
     s->captured = s->given_up = false;
     s->value = s->u95 = 0;
     sm_stay_again(s, t_ns, bin_ns);

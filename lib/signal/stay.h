@@ -29,6 +29,8 @@ struct sm_stay {
     enum sm_transit_how way_how;
     struct sm_going going; /* the latest that led here */
     unsigned lifts;
+    int64_t lift_t_ns; /* return from the latest of them, */
+    double lift_level; /* and the level at which it was left */
     bool captured;
     bool given_up;                     /* the longest wait is over */
     double value, u95;                 /* captured */

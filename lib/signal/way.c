@@ -9,7 +9,8 @@
 /* How near two levels count as the same: within so many tolerances, or display steps. */
 #define ALIKE_TOLERANCES 2.0
 #define ALIKE_STEPS 3.0
-#define ALIKE_NOISE 6.0 /* … or so many times the noise */
+#define ALIKE_NOISE 6.0          /* … or so many times the noise */
+#define ELSEWHERE_TOLERANCES 3.0 /* further from the old level than this is another place */
 #define CREEP_TOLERANCES                                                                           \
     4.0 /* a stay that crept more than this in a lift's time is not put back                       \
          */
@@ -159,7 +160,9 @@ static bool is_back(const struct sm_signal *s, double level, double reach, doubl
 }
 
 /* The old window goes on. But what was left before the dwell was over may have been a rinse, dipped
- * into twice: then the dwell counts again from the return, or two rinses would make a stay. */
+ * into twice: then the dwell counts again from the return, or two rinses would make a stay. So it
+ * does when the signal then goes elsewhere: it only passed by the old level
+ * (sm_way_look_on). */
 static void put_back(struct sm_signal *s, int64_t t_ns)
 {
     struct sm_stay *stay = &s->stay[s->now ^ 1];
@@ -167,10 +170,22 @@ static void put_back(struct sm_signal *s, int64_t t_ns)
     tell_transit(s, t_ns, true);
     s->now ^= 1;
     stay->lifts++;
-    if (s->way.kept_t_ns - stay->dwell_t_ns < s->pace.dwell_ns)
+    stay->lift_t_ns = t_ns;
+    stay->lift_level = s->way.before;
+    if (s->way.kept_t_ns - stay->dwell_t_ns < s->pace.dwell_ns ||
+        s->way.kept_t_ns - stay->swift_t_ns < s->pace.dwell_ns)
         stay->dwell_t_ns = t_ns;
     s->way.kept = false;
     s->where = SM_STAYING;
+}
+
+void sm_way_look_on(struct sm_signal *s, const struct sm_signal_reading *r)
+{
+    struct sm_stay *stay = sm_stay_now(s);
+
+    if (s->where == SM_STAYING && stay->lifts > 0 && stay->dwell_t_ns < stay->lift_t_ns &&
+        fabs(r->value - stay->lift_level) > ELSEWHERE_TOLERANCES * sm_tolerance(s))
+        stay->dwell_t_ns = stay->lift_t_ns;
 }
 
 /* The stay kept is given up: it is over since it was left. */

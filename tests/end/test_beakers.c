@@ -87,14 +87,15 @@ struct count {
     unsigned from_air, from_rinse, lost;
     unsigned by_value; /* first captures whose immersion began without a transit seen */
     unsigned alike_rinse, alike_lost; /* cannot be told apart by their values: see below */
+    unsigned short_lost;              /* … and the air before it was as short as stray readings */
     struct family family[SM_SIM_RESPONSE_COUNT];
 };
 
 struct watch {
     const struct sm_sim_truth *truth;
-    unsigned *got;  /* [truth->n] captures in each stay */
-    unsigned *kind; /* [truth->n] response of each beaker */
-    double tolerance;
+    unsigned *got;             /* [truth->n] captures in each stay */
+    unsigned *kind;            /* [truth->n] response of each beaker */
+    double tolerance, stray_s; /* odd readings that span less than stray_s are stray */
     uint64_t seed;
     enum sm_mark_by by; /* of the latest `moved` */
     struct count *count;
@@ -126,10 +127,29 @@ static int beaker_before(const struct sm_sim_truth *t, int i)
 }
 
 /* Two solutions whose readings lie nearer to each other than what counts as a departure from a
- * captured value: no rule can tell them apart. */
+ * captured value, or a beaker in which the signal stands where it stood: no rule can tell. */
 static bool alike(const struct watch *w, int i, int k)
 {
-    return k >= 0 && fabs(w->truth->stay[i].end - w->truth->stay[k].end) <= 3 * w->tolerance;
+    const struct sm_sim_stay *s = w->truth->stay;
+
+    return k >= 0 && (fabs(s[i].end - s[k].end) <= 3 * w->tolerance || !(s[i].settle_s > 0));
+}
+
+/* The way to beaker i was nothing but air whose readings may have spanned less than what counts as
+ * more than stray. */
+static bool short_way(const struct watch *w, int i)
+{
+    const struct sm_sim_stay *s = w->truth->stay;
+    const int before = beaker_before(w->truth, i);
+
+    for (int k = i - 1; k > before; k--) {
+        if (before >= 0 && s[k].begin_t_ns < s[before].end_t_ns)
+            continue; /* within the beaker before */
+        if (s[k].kind != SM_SIM_STEP_AIR ||
+            1e-9 * (double)(s[k].end_t_ns - s[k].begin_t_ns) > w->stray_s)
+            return false;
+    }
+    return true;
 }
 
 static void captured(struct watch *w, const struct log_maker *m, double value)
@@ -258,6 +278,10 @@ static void look_for_lost(struct watch *w)
             w->count->alike_lost++;
             continue;
         }
+        if (short_way(w, (int)i)) {
+            w->count->short_lost++;
+            continue;
+        }
         w->count->lost++;
         print_message("    seed %llu: lost %s, %.1f s to %.1f s, settled after %.1f s\n",
                       (unsigned long long)w->seed, t->stay[i].name,
@@ -282,6 +306,7 @@ static void session(const struct series *s, uint64_t seed, struct count *count)
     assert_int_equal(sm_sim_truth_create(&sc, &truth), SM_OK);
     assert_int_equal(sm_sim_create(&sc, &sim), SM_OK);
     w.tolerance = r.tolerance;
+    w.stray_s = fmin(s->dwell_s, 22) / 22 + 2 / sc.rate_per_s; /* lib/signal/pace.h: odd_ns */
     w.got = calloc(truth.n, sizeof *w.got);
     w.kind = kinds(&sc, &truth);
     assert_non_null(w.got);
@@ -306,9 +331,10 @@ static void print_count(const struct series *s, unsigned sessions, const struct 
                   (unsigned long long)(s->first_seed + sessions - 1), c->beakers, c->stayed);
     print_message("    %u captures; by value, not transit %u; twice in one beaker %u; in beakers "
                   "left early %u; from air %u, "
-                  "from rinse %u, lost %u; not to be told apart: rinses %u, lost %u\n",
+                  "from rinse %u, lost %u; not to be told apart: rinses %u, lost %u, "
+                  "behind the shortest air %u\n",
                   c->captures, c->by_value, c->doubles, c->early, c->from_air, c->from_rinse,
-                  c->lost, c->alike_rinse, c->alike_lost);
+                  c->lost, c->alike_rinse, c->alike_lost, c->short_lost);
     print_message("    further from the end than the tolerance:");
     for (int k = 0; k < SM_SIM_RESPONSE_COUNT; k++) {
         const struct family *f = &c->family[k];
