@@ -13,6 +13,7 @@
 #include <string.h>
 
 #include "sim/random_session.h"
+#include "slow.h"
 
 #define UTC_US INT64_C(1796112000000000) /* 2026-12-01T08:00:00Z */
 #define BEAKERS 40                       /* in a session */
@@ -91,10 +92,18 @@ struct count {
     struct family family[SM_SIM_RESPONSE_COUNT];
 };
 
+struct seen {
+    int64_t t_ns;
+    double value;
+};
+
 struct watch {
     const struct sm_sim_truth *truth;
-    unsigned *got;             /* [truth->n] captures in each stay */
-    unsigned *kind;            /* [truth->n] response of each beaker */
+    unsigned *got;  /* [truth->n] captures in each stay */
+    unsigned *kind; /* [truth->n] response of each beaker */
+    double *from;   /* [truth->n] where the signal stood when each beaker began */
+    struct seen *seen;
+    size_t n_seen, cap_seen;   /* readings */
     double tolerance, stray_s; /* odd readings that span less than stray_s are stray */
     uint64_t seed;
     enum sm_mark_by by; /* of the latest `moved` */
@@ -126,13 +135,37 @@ static int beaker_before(const struct sm_sim_truth *t, int i)
     return i;
 }
 
-/* Two solutions whose readings lie nearer to each other than what counts as a departure from a
- * captured value, or a beaker in which the signal stands where it stood: no rule can tell. */
-static bool alike(const struct watch *w, int i, int k)
+static bool near(const struct watch *w, double a, double b)
+{
+    return fabs(a - b) <= 3 * w->tolerance; /* no departure from a captured value */
+}
+
+/* A beaker that reads like the one before, or in which the signal stands where it stood: there is
+ * nothing to tell by. */
+static bool alike_beaker(const struct watch *w, int i)
 {
     const struct sm_sim_stay *s = w->truth->stay;
+    const int before = beaker_before(w->truth, i);
 
-    return k >= 0 && (fabs(s[i].end - s[k].end) <= 3 * w->tolerance || !(s[i].settle_s > 0));
+    return (before >= 0 && near(w, s[i].end, s[before].end)) || near(w, s[i].end, w->from[i]);
+}
+
+/* A rinse that reads like the beaker before it, or like what the air happened to read on the way
+ * to it. */
+static bool alike_rinse(const struct watch *w, int i)
+{
+    const struct sm_sim_stay *s = w->truth->stay;
+    const int before = beaker_before(w->truth, i);
+
+    if (before >= 0 && near(w, s[i].end, s[before].end))
+        return true;
+    for (size_t k = w->n_seen; k-- > 0 && (before < 0 || w->seen[k].t_ns >= s[before].end_t_ns);) {
+        const int at = stay_at(w->truth, w->seen[k].t_ns);
+
+        if (at >= 0 && s[at].kind == SM_SIM_STEP_AIR && near(w, w->seen[k].value, s[i].end))
+            return true;
+    }
+    return false;
 }
 
 /* The way to beaker i was nothing but air whose readings may have spanned less than what counts as
@@ -163,7 +196,7 @@ static void captured(struct watch *w, const struct log_maker *m, double value)
         print_message("    seed %llu: captured %.2f at %.1f s in %s\n", (unsigned long long)w->seed,
                       value, 1e-9 * (double)m->now_ns, s == NULL ? "?" : sm_sim_step_name(s->kind));
     } else if (s->kind == SM_SIM_STEP_RINSE) {
-        if (alike(w, at, beaker_before(w->truth, at))) {
+        if (alike_rinse(w, at)) {
             w->count->alike_rinse++;
             return;
         }
@@ -184,10 +217,22 @@ static void captured(struct watch *w, const struct log_maker *m, double value)
     }
 }
 
+static void see(struct watch *w, int64_t t_ns, double value)
+{
+    if (w->n_seen == w->cap_seen) {
+        w->cap_seen = 2 * w->cap_seen + 1000;
+        w->seen = realloc(w->seen, w->cap_seen * sizeof *w->seen);
+        assert_non_null(w->seen);
+    }
+    w->seen[w->n_seen++] = (struct seen){ t_ns, value };
+}
+
 static void on_event(void *arg, struct log_maker *m, const struct sm_event *e)
 {
     struct watch *w = arg;
 
+    if (e->kind == SM_EVENT_READING)
+        see(w, m->now_ns, e->u.reading.channel[0].value);
     if (e->kind == SM_EVENT_MOVED)
         w->by = e->u.moved.by;
     if (e->kind != SM_EVENT_CAPTURE)
@@ -241,25 +286,34 @@ static void prepare(struct log_maker *m, const struct series *s, double toleranc
     m->core_setup = setup;
 }
 
-/* Which response each beaker had. */
-static unsigned *kinds(const struct sm_scenario *sc, const struct sm_sim_truth *t)
+/* Which response each beaker had, and where the signal stood when it began. */
+static void look_at_beakers(struct watch *w, const struct sm_scenario *sc)
 {
-    unsigned *kind = calloc(t->n, sizeof *kind);
-    unsigned now = (unsigned)sc->response.kind, item = 0;
+    const struct sm_sim_truth *t = w->truth;
+    enum sm_sim_response_kind now = sc->response.kind;
+    struct sm_sim_probe probe;
+    unsigned item = 0;
+    int64_t t_ns = 0;
 
-    assert_non_null(kind);
+    w->kind = calloc(t->n, sizeof *w->kind);
+    w->from = calloc(t->n, sizeof *w->from);
+    assert_true(w->kind != NULL && w->from != NULL);
+    sm_sim_probe_start(&probe, sc);
     for (size_t i = 0; i < sc->n_steps; i++) {
-        if (sc->step[i].kind == SM_SIM_STEP_RESPONSE)
-            now = (unsigned)sc->step[i].response.kind;
-        if (sc->step[i].kind != SM_SIM_STEP_IN)
-            continue;
-        item++;
-        for (size_t k = 0; k < t->n; k++) {
-            if (t->stay[k].kind == SM_SIM_STEP_IN && t->stay[k].item == item)
-                kind[k] = now;
+        const struct sm_sim_step *step = &sc->step[i];
+
+        if (step->kind == SM_SIM_STEP_RESPONSE)
+            now = step->response.kind;
+        item += step->kind == SM_SIM_STEP_IN;
+        for (size_t k = 0; step->kind == SM_SIM_STEP_IN && k < t->n; k++) {
+            if (t->stay[k].kind != SM_SIM_STEP_IN || t->stay[k].item != item)
+                continue;
+            w->kind[k] = (unsigned)now;
+            w->from[k] = sm_sim_probe_signal(&probe, t_ns);
         }
+        sm_sim_probe_step(&probe, sc, step, t_ns);
+        t_ns += sm_sim_step_span_ns(step);
     }
-    return kind;
 }
 
 static void look_for_lost(struct watch *w)
@@ -274,7 +328,7 @@ static void look_for_lost(struct watch *w)
         w->count->early += !t->stay[i].stayed_three && w->got[i] > 0;
         if (!t->stay[i].stayed_three || w->got[i] > 0)
             continue;
-        if (alike(w, (int)i, beaker_before(t, (int)i))) {
+        if (alike_beaker(w, (int)i)) {
             w->count->alike_lost++;
             continue;
         }
@@ -308,7 +362,7 @@ static void session(const struct series *s, uint64_t seed, struct count *count)
     w.tolerance = r.tolerance;
     w.stray_s = fmin(s->dwell_s, 22) / 22 + 2 / sc.rate_per_s; /* lib/signal/pace.h: odd_ns */
     w.got = calloc(truth.n, sizeof *w.got);
-    w.kind = kinds(&sc, &truth);
+    look_at_beakers(&w, &sc);
     assert_non_null(w.got);
     prepare(&m, s, r.tolerance, &setup, &method);
     m.event = on_event;
@@ -319,6 +373,8 @@ static void session(const struct series *s, uint64_t seed, struct count *count)
     log_maker_finish(&m);
     free(w.got);
     free(w.kind);
+    free(w.from);
+    free(w.seen);
     sm_sim_destroy(sim);
     sm_sim_truth_free(&truth);
     sm_scenario_free(&sc);
@@ -353,7 +409,7 @@ static void nothing_from_air_or_rinse_and_no_beaker_that_stayed_is_lost(void **s
     (void)state;
     for (size_t i = 0; i < COUNT(all_series); i++) {
         const struct series *series = &all_series[i];
-        const unsigned sessions = times * series->sessions;
+        const unsigned sessions = times * series->sessions / (SLOW_BUILD ? 5 : 1);
         struct count c = { 0 };
 
         for (unsigned k = 0; k < sessions; k++)

@@ -13,6 +13,7 @@
 #include "record/recover.h"
 #include "record/verify.h"
 #include "sim/probe.h"
+#include "slow.h"
 #include "view/rerun.h"
 
 #define UTC_US INT64_C(1796112000000000) /* 2026-12-01T08:00:00Z */
@@ -357,7 +358,7 @@ static void cut_everywhere(struct session *s, const char *name, size_t every)
     for (size_t i = 0; i < n; i++) {
         char what[120];
 
-        if (!may[i] || places++ % every != 0)
+        if (!may[i] || places++ % (SLOW_BUILD ? 10 * every : every) != 0)
             continue;
         (void)play_cut(s, &cut, &i, 1, NULL, 0);
         snprintf(what, sizeof what, "%.40s cut after %zu of %zu", name, i, n);
@@ -367,7 +368,7 @@ static void cut_everywhere(struct session *s, const char *name, size_t every)
     print_message("  %s: %zu captures; may be cut at %zu of %zu places; %zu of them tried, values "
                   "differ by at most %.3f tolerances\n",
                   name, outcomes_count(&whole, SM_EVENT_CAPTURE), places, n, cuts, most);
-    assert_true(cuts >= 50 && outcomes_count(&whole, SM_EVENT_CAPTURE) >= 15);
+    assert_true(cuts >= (SLOW_BUILD ? 5 : 50) && outcomes_count(&whole, SM_EVENT_CAPTURE) >= 15);
 }
 
 static void the_demonstration_cut_in_two_anywhere_gives_the_same(void **state)

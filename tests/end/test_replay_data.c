@@ -233,7 +233,7 @@ static void check_fact(struct run *r, const char *path, unsigned row, char *text
 {
     char *cell[5];
     const struct found *f;
-    double want, tolerance;
+    double want = 0, tolerance = 0;
 
     for (int i = 0; i < 5; i++) {
         cell[i] = text;
