@@ -19,7 +19,7 @@ struct sm_group_line {
 };
 
 struct sm_group {
-    struct sm_group *next; /* in the meter's list of those under way */
+    struct sm_group *next;          /* in the meter's list of those under way */
     uint64_t epoch;                 /* of the meter's file; older ones are dropped */
     char begins[SM_FILE_NAME_SIZE]; /* the file that this group begins; "" goes on with the one open
                                      */

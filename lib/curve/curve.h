@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* curve.h: a calibration function fitted to standards, its statistics, and readings taken off it. */
+/* curve.h: a calibration function fitted to standards, its statistics, and readings taken off it.
+ */
 #ifndef SM_CURVE_CURVE_H
 #define SM_CURVE_CURVE_H
 #include <stdbool.h>
@@ -8,7 +9,7 @@
 #include "base/status.h"
 #include "base/text.h"
 
-#define SM_POINTS_MAX 128     /* standards of one curve at the bench */
+#define SM_POINTS_MAX 128       /* standards of one curve at the bench */
 #define SM_FIT_POINTS_MAX 20000 /* points of `stillmark fit` */
 #define SM_COEFFICIENTS_MAX 3
 
@@ -41,8 +42,8 @@ struct sm_curve {
     size_t n, dof, n_coefficients, levels;
     struct sm_coefficient coefficient[SM_COEFFICIENTS_MAX]; /* rising power of x */
     double covariance[SM_COEFFICIENTS_MAX][SM_COEFFICIENTS_MAX];
-    double residual_sd; /* of y; dof > 0 */
-    double r_squared;   /* uncentred for PROPORTIONAL; NaN where all y are alike */
+    double residual_sd;  /* of y; dof > 0 */
+    double r_squared;    /* uncentred for PROPORTIONAL; NaN where all y are alike */
     double x_from, x_to; /* lowest and highest standard */
     double x_mean, sxx;  /* mean of x and sum of (x - x_mean)^2. PROPORTIONAL: 0 and sum of x^2;
                           * NERNST: of the pH that each standard would have at t_c */
@@ -67,16 +68,13 @@ struct sm_point {
     double t_c; /* NERNST; else ignored */
 };
 
-/* Least squares by QR or SVD on centred data (GSL). NERNST: E = Eiso - s kN(t) (pH - pHiso), each point
- * at its own temperature; `coefficient` is then the line at the mean temperature: intercept (mV at
- * pH 0) and slope (mV/pH).
- * Allocates for the time of the call (a curve is fitted once per set of standards).
- *   SM_ESHORT  fewer points, or fewer distinct x, than coefficients + 1 (equal numbers fit without
- *              statistics are refused too)
- *   SM_EVALUE  a point that is not finite, or numbers too far apart for a double
- *   SM_EINVAL  a model that is not built
- *   SM_EFULL   more than SM_FIT_POINTS_MAX
- *   SM_ENOMEM  no memory */
+/* Least squares by QR or SVD on centred data (GSL). NERNST: E = Eiso - s kN(t) (pH - pHiso), each
+ * point at its own temperature; `coefficient` is then the line at the mean temperature: intercept
+ * (mV at pH 0) and slope (mV/pH). Allocates for the time of the call (a curve is fitted once per
+ * set of standards). SM_ESHORT  fewer points, or fewer distinct x, than coefficients + 1 (equal
+ * numbers fit without statistics are refused too) SM_EVALUE  a point that is not finite, or numbers
+ * too far apart for a double SM_EINVAL  a model that is not built SM_EFULL   more than
+ * SM_FIT_POINTS_MAX SM_ENOMEM  no memory */
 SM_MUST_CHECK enum sm_status sm_curve_fit(enum sm_model m, const struct sm_point *p, size_t n,
                                           double ph_iso, struct sm_curve *ret_curve);
 
@@ -91,14 +89,15 @@ struct sm_read_off {
 };
 
 /* x for a mean y of m replicates (NERNST: at t_c).
- *   SM_EVALUE  no x, or no single one within reach, gives this y. QUADRATIC: within reach is what lies
- *              between the standards, else what lies on their side of the turning point
- *   SM_EINVAL  m is 0 */
-SM_MUST_CHECK enum sm_status sm_curve_read(const struct sm_curve *c, double y, unsigned m, double t_c,
-                                           struct sm_read_off *ret_read);
+ *   SM_EVALUE  no x, or no single one within reach, gives this y. QUADRATIC: within reach is what
+ * lies between the standards, else what lies on their side of the turning point SM_EINVAL  m is 0
+ */
+SM_MUST_CHECK enum sm_status sm_curve_read(const struct sm_curve *c, double y, unsigned m,
+                                           double t_c, struct sm_read_off *ret_read);
 
-/* Line against quadratic at 99 % (Mandel): for LINE and NERNST, from four points at three levels up.
- * has = false where it cannot be computed; so too where the points lie on the line to the last digit. */
+/* Line against quadratic at 99 % (Mandel): for LINE and NERNST, from four points at three levels
+ * up. has = false where it cannot be computed; so too where the points lie on the line to the last
+ * digit. */
 void sm_curve_linearity(enum sm_model m, const struct sm_point *p, size_t n, double ph_iso,
                         struct sm_linearity *ret_linearity);
 

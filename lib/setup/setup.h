@@ -37,7 +37,8 @@ struct sm_meter_setup {
 
 struct sm_setup {
     char file[SM_SETUP_PATH_SIZE];
-    char logs[SM_SETUP_PATH_SIZE], state[SM_SETUP_PATH_SIZE]; /* joined to the setup file's folder */
+    char logs[SM_SETUP_PATH_SIZE],
+        state[SM_SETUP_PATH_SIZE];   /* joined to the setup file's folder */
     char socket[SM_SETUP_PATH_SIZE]; /* "" not stated */
     size_t n_people;
     struct sm_person people[SM_PEOPLE_MAX];

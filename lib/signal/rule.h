@@ -24,17 +24,17 @@ enum sm_class { SM_CLASS_STANDARD, SM_CLASS_CHECK, SM_CLASS_SAMPLE, SM_CLASS_COU
 
 struct sm_rule {
     enum sm_rule_kind kind;
-    double tolerance[SM_CLASS_COUNT];            /* u (the signal's unit), > 0 */
-    double doubt[SM_CLASS_COUNT];                /* 0 … 1 */
-    double drift_allowed_per_s[SM_CLASS_COUNT];  /* u/s, >= 0 */
-    int64_t dwell_ns;                            /* least time in one place */
-    int64_t longest_wait_ns[SM_CLASS_COUNT];     /* from the move; then "not settled" */
-    int64_t over_ns;                             /* spread, drift: the span that is judged */
-    unsigned readings;                           /* successive: how many */
-    int64_t apart_ns;                            /* successive: how far apart */
-    double limit;                                /* successive: u; drift: u/min */
-    double single_u;                             /* single: standard uncertainty, u */
-    bool has_plausible;                          /* else none is too far */
-    double plausible_from, plausible_to;         /* outside: open circuit */
+    double tolerance[SM_CLASS_COUNT];           /* u (the signal's unit), > 0 */
+    double doubt[SM_CLASS_COUNT];               /* 0 … 1 */
+    double drift_allowed_per_s[SM_CLASS_COUNT]; /* u/s, >= 0 */
+    int64_t dwell_ns;                           /* least time in one place */
+    int64_t longest_wait_ns[SM_CLASS_COUNT];    /* from the move; then "not settled" */
+    int64_t over_ns;                            /* spread, drift: the span that is judged */
+    unsigned readings;                          /* successive: how many */
+    int64_t apart_ns;                           /* successive: how far apart */
+    double limit;                               /* successive: u; drift: u/min */
+    double single_u;                            /* single: standard uncertainty, u */
+    bool has_plausible;                         /* else none is too far */
+    double plausible_from, plausible_to;        /* outside: open circuit */
 };
 #endif

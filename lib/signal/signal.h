@@ -1,8 +1,8 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* signal.h: the seam behind which it is decided whether a signal has settled. Fed readings, marks,
- * ticks and ends; drained of moved, transit, settling, settled, not settled and open circuit. What is
- * behind it may change; what passes through it may only grow. Memory is fixed at creation; the same
- * inputs give the same bits; nothing is known here of meters, sheets or files. */
+ * ticks and ends; drained of moved, transit, settling, settled, not settled and open circuit. What
+ * is behind it may change; what passes through it may only grow. Memory is fixed at creation; the
+ * same inputs give the same bits; nothing is known here of meters, sheets or files. */
 #ifndef SM_SIGNAL_SIGNAL_H
 #define SM_SIGNAL_SIGNAL_H
 #include "base/status.h"
@@ -11,7 +11,8 @@
 #include "signal/rule.h"
 
 #define SM_OTHERS_MAX (SM_CHANNELS_MAX - 1)
-#define SM_OTHER_OLDEST_NS INT64_C(5000000000) /* another channel older than this is not averaged */
+#define SM_OTHER_OLDEST_NS INT64_C(5000000000) /* another channel older than this is not averaged  \
+                                                */
 
 struct sm_other {
     bool present;
@@ -30,15 +31,20 @@ struct sm_signal_reading {
 enum sm_mark_by { SM_MOVED_START, SM_MOVED_TRANSIT, SM_MOVED_MARK, SM_MOVED_VALUE, SM_MOVED_LINE };
 const char *sm_moved_by_name(enum sm_mark_by by); /* "start", "transit", "mark", "value", "line" */
 
-enum sm_transit_how { SM_TRANSIT_OPEN, SM_TRANSIT_WORD, SM_TRANSIT_PLAUSIBLE, SM_TRANSIT_DEPARTURES };
+enum sm_transit_how {
+    SM_TRANSIT_OPEN,
+    SM_TRANSIT_WORD,
+    SM_TRANSIT_PLAUSIBLE,
+    SM_TRANSIT_DEPARTURES
+};
 const char *sm_transit_how_name(enum sm_transit_how how); /* "open circuit", "word", "implausible",
                                                            * "two departures" */
 
 /* How the channel stood when the signal was created (plain data, part of `carried`). */
 struct sm_channel_memory {
-    double noise;       /* u, standard deviation of a reading; 0 unknown */
-    double long_noise;  /* u, long-run noise at former captures, per sqrt(s); 0 unknown */
-    double step;        /* u, display step; 0 unknown */
+    double noise;      /* u, standard deviation of a reading; 0 unknown */
+    double long_noise; /* u, long-run noise at former captures, per sqrt(s); 0 unknown */
+    double step;       /* u, display step; 0 unknown */
     double usual_wait_s[SM_CLASS_COUNT]; /* 0 unknown */
     unsigned captures;
 };
@@ -46,16 +52,22 @@ struct sm_channel_memory {
 struct sm_signal_start {
     enum { SM_PLACE_NEW, SM_PLACE_STILL, SM_PLACE_LEFT } place;
     /* NEW: nothing is known: the first reading begins an immersion (moved by start).
-     * STILL: the probe is still in a solution already captured, whose value was `value` and U95 `u95`:
-     *        nothing is captured until a transit, a mark or a departure from it.
-     * LEFT: a transit was under way: the next solution opens by transit. */
+     * STILL: the probe is still in a solution already captured, whose value was `value` and U95
+     * `u95`: nothing is captured until a transit, a mark or a departure from it. LEFT: a transit
+     * was under way: the next solution opens by transit. */
     double value, u95;
 };
 
 /* The parts of an expanded uncertainty, each as a half-width at 95 %; a part nobody computed yet is
  * left out (has = false), never 0. */
-enum sm_part { SM_PART_NOISE, SM_PART_TO_COME, SM_PART_STEP, SM_PART_LONG_NOISE, SM_PART_DRIFT,
-               SM_PART_COUNT };
+enum sm_part {
+    SM_PART_NOISE,
+    SM_PART_TO_COME,
+    SM_PART_STEP,
+    SM_PART_LONG_NOISE,
+    SM_PART_DRIFT,
+    SM_PART_COUNT
+};
 const char *sm_part_name(enum sm_part p); /* "noise", "to_come", "step", "long_noise", "drift" */
 
 struct sm_maybe {
@@ -63,12 +75,13 @@ struct sm_maybe {
     double value;
 };
 
-/* When it is told: an open circuit, and a first departure after a capture (moved by value), at once. A
- * transit, with the moved that ends it, when the new place has been calm for a quarter of the dwell (2 s
- * at most), so that air and rinses make few ways. Where a lift out of an uncaptured immersion may
- * yet come back (half the dwell, 10 s at most) nothing is told before that is decided: then either
- * a transit with `returned` alone, or not-settled (if it outlasted the dwell), transit and moved. A lift
- * out of an immersion younger than the dwell starts the dwell again: it may be a rinse dipped twice. */
+/* When it is told: an open circuit, and a first departure after a capture (moved by value), at
+ * once. A transit, with the moved that ends it, when the new place has been calm for a quarter of
+ * the dwell (2 s at most), so that air and rinses make few ways. Where a lift out of an uncaptured
+ * immersion may yet come back (half the dwell, 10 s at most) nothing is told before that is
+ * decided: then either a transit with `returned` alone, or not-settled (if it outlasted the dwell),
+ * transit and moved. A lift out of an immersion younger than the dwell starts the dwell again: it
+ * may be a rinse dipped twice. */
 enum sm_signal_kind {
     SM_SIGNAL_MOVED,       /* a new immersion */
     SM_SIGNAL_TRANSIT,     /* the way between two, or a lift (`returned`) */
@@ -101,8 +114,9 @@ struct sm_signal_event {
     enum sm_signal_kind kind;
     int64_t t_ns;       /* of the input that brought it out */
     enum sm_mark_by by; /* MOVED */
-    int64_t from_t_ns;  /* MOVED, NOT_SETTLED: when the immersion began; TRANSIT: when the way began */
-    int64_t to_t_ns;    /* TRANSIT, NOT_SETTLED: when it was over */
+    int64_t
+        from_t_ns;   /* MOVED, NOT_SETTLED: when the immersion began; TRANSIT: when the way began */
+    int64_t to_t_ns; /* TRANSIT, NOT_SETTLED: when it was over */
     enum sm_transit_how how; /* TRANSIT */
     bool returned;           /* TRANSIT: came back alike before a capture: the immersion goes on */
     unsigned clock;          /* of the mark, 0 … 31 */
