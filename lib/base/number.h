@@ -10,8 +10,10 @@
 #define SM_NUMBER_SIZE 32
 
 /* The whole of s[n] as a finite decimal number: sign, digits, one point, exponent; no spaces, no
- * hex, no "inf" or "nan". SM_ESYNTAX  not of that form, or longer than 63 bytes SM_EVALUE   too
- * large for a double (one too small for a double reads as the nearest, which may be 0) */
+ * hex, no "inf" or "nan".
+ *   SM_ESYNTAX  not of that form, or longer than 63 bytes
+ *   SM_EVALUE   too large for a double (one too small for a double reads as the nearest, which may
+ *               be 0) */
 SM_MUST_CHECK enum sm_status sm_number_parse(const char *s, size_t n, double *ret_value);
 
 /* Bytes of the longest such number at the head of s[n], of any length; 0 where there is none. */

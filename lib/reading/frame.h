@@ -61,8 +61,9 @@ struct sm_framer { /* readable anywhere, written only by frame.c */
 void sm_framer_init(struct sm_framer *f, const struct sm_framing *how, bool fresh);
 
 /* Lends a chunk. A bad byte never ends a line, whatever its value: two lines then come out as one
- * that is SM_LINE_BAD. SM_EBUSY   until sm_framer_next has given false SM_EINVAL  more than
- * SM_CHUNK_MAX bytes; offsets of bad bytes not rising or past the end */
+ * that is SM_LINE_BAD.
+ *   SM_EBUSY   until sm_framer_next has given false
+ *   SM_EINVAL  more than SM_CHUNK_MAX bytes; offsets of bad bytes not rising or past the end */
 SM_MUST_CHECK enum sm_status sm_framer_feed(struct sm_framer *f, const struct sm_chunk *c);
 
 /* The next line of the chunk; false: drained. Empty lines are passed over in silence. */

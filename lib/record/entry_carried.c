@@ -3,10 +3,15 @@
  * whose value is none, unknown or "no". Ages are ns.
  *
  *   run          runs, captures (counted ever), number, sheet, next (0 is the first item), open,
- * left items [{captures, capture, skipped}] curve        n, accepted, ended, why, sensor, method,
- * age points [{capture, item, name, x, y, expanded_uncertainty, temperature}] results      [{n,
- * run, item, state, why}] checks       since, last_good, last questions    [{n, capture}] people
- * on_duty last         capture, item, name, value, expanded_uncertainty, place rest         age
+ *                left, items [{captures, capture, skipped}]
+ *   curve        n, accepted, ended, why, sensor, method, age,
+ *                points [{capture, item, name, x, y, expanded_uncertainty, temperature}]
+ *   results      [{n, run, item, state, why}]
+ *   checks       since, last_good, last
+ *   questions    [{n, capture}]
+ *   people       on_duty
+ *   last         capture, item, name, value, expanded_uncertainty, place
+ *   rest         age
  *   temperature  value (°C), who, age
  *   acts         [ids], oldest first
  *   channel      noise, long_noise, step, usual_wait {standard, check, sample} (s), captures

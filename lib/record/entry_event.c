@@ -5,22 +5,30 @@
  * "where" stands for run, item (from 1), name, kind ("standard", "sample" …); left out without one.
  *
  *   capture       moved, run, item, name, kind, title (where it differs from the name), number,
- * value, unit, expanded_uncertainty, parts {noise, to_come, step, long_noise, drift}, window [from,
- * to], readings, lifts, sd, step, rule, prescribed, tolerance, since_moved, end_value, doubt, with
- * {channel: mean}, with_range {channel: largest less smallest}, who, remarks [sentences] curve see
- * entry_curve.c check         capture, curve, where, want, found, difference, within, unit,
- * closing, pass, why result        capture, curve, run, item, name, kind, title, value, unit,
- * expanded_uncertainty, shown ("< 1.68"), temperature (°C), temperature_how, state, why, remarks
- * [sentences] hold, release check, why, results [n …] question      capture, asks, text answer act,
- * id, done, why moved         by, of, where, began, why transit       from, to, how, returned
+ *                 value, unit, expanded_uncertainty,
+ *                 parts {noise, to_come, step, long_noise, drift}, window [from, to], readings,
+ *                 lifts, sd, step, rule, prescribed, tolerance, since_moved, end_value, doubt,
+ *                 with {channel: mean}, with_range {channel: largest less smallest}, who,
+ *                 remarks [sentences]
+ *   curve         see entry_curve.c
+ *   check         capture, curve, where, want, found, difference, within, unit, closing, pass, why
+ *   result        capture, curve, run, item, name, kind, title, value, unit, expanded_uncertainty,
+ *                 shown ("< 1.68"), temperature (°C), temperature_how, state, why,
+ *                 remarks [sentences]
+ *   hold, release check, why, results [n …]
+ *   question      capture, asks, text
+ *   answer        act, id, done, why
+ *   moved         by, of, where, began, why
+ *   transit       from, to, how, returned
  *   not-settled   moved, where, why
  *   open-circuit
  *   silent        last_line
  *   unread        count | line (what was wrong with it), b, length (where b is not all of it), why
  *   ask           b, identity (only where true)
  *   carried       the sections, see entry_carried.c
- *   reading       values [{value, step, digits, flag (where not ok)} …], empty where absent; the
- * profile's order settling      latest, unit, since_moved, to_come, wait_s
+ *   reading       values [{value, step, digits, flag (where not ok)} …], empty where absent; in
+ *                 the profile's order
+ *   settling      latest, unit, since_moved, to_come, wait_s
  *
  * The last two are live: they have no n and are never in a log. */
 #include "record/event.h"

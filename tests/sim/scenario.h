@@ -14,15 +14,20 @@
  *   dropout 1 %                      readings that never come
  *   noise 0.05 mV [white | ar 0.5 | hum 3 /s | telegraph 0.05]
  *   step 0.1 mV                      of the display
- *   response [exponential] 0.5 s | double 0.5 s 20 s 10 % | hyperbolic 2 s | sqrt 0.01 s | layer 1
- * s drift 0 mV/h                     of the electrode temperature 20 °C                of solutions
- * and of the air, where a step says no other probe-response 3 s               of the temperature
- * channel electrode pH slope 98.6 % offset 3.9 mV        (log: the same; line slope 0.215 offset
- * 0.001) open wander | rail 1999.9 mV | word "OVR"      what the meter shows in air rinse-water 6.5
- * pH start 7.0 pH                     where the electrode stood before; left out: the rinse water
+ *   response [exponential] 0.5 s | double 0.5 s 20 s 10 % | hyperbolic 2 s | sqrt 0.01 s |
+ *            layer 1 s
+ *   drift 0 mV/h                     of the electrode
+ *   temperature 20 °C                of solutions and of the air, where a step says no other
+ *   probe-response 3 s               of the temperature channel
+ *   electrode pH slope 98.6 % offset 3.9 mV
+ *                                    log: the same; line: slope 0.215 offset 0.001
+ *   open wander | rail 1999.9 mV | word "OVR"
+ *                                    what the meter shows in air
+ *   rinse-water 6.5 pH
+ *   start 7.0 pH                     where the electrode stood before; left out: the rinse water
  *   tolerance 0.6 mV                 to which the truth states settling times
  *   dwell 3 s                        of the method, for the truth's "stayed_three"
- *   shape plain-mv                   or  shape "%+07.1v mV\r\n"  (shape.h)
+ *   shape plain-mv                   or  shape "%+07.1v mV\r\n", see shape.h
  *   status st                        replaces the shape's word for "all is well"
  *   ask "R\r"   identity "I\r" "meter 7\r\n"       replace those of the shape
  *   answer 120 ms                    from a question to its answer

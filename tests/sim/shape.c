@@ -85,9 +85,9 @@ const char *sm_sim_shape_wrong(const struct sm_sim_shape_text *line)
     int directives = 0;
 
     if (line->n == 0)
-        return "the line is empty";
+        return "a line that is not empty";
     if (strlen(line->bytes) != line->n)
-        return "the line holds a NUL";
+        return "a line without NUL";
     for (size_t at = 0; at < line->n;) {
         struct directive d;
         if (line->bytes[at] != '%') {
@@ -96,15 +96,15 @@ const char *sm_sim_shape_wrong(const struct sm_sim_shape_text *line)
         }
         at = directive_read(line, at, &d);
         if (d.letter == '\0' || !strchr("vaemstnwXSM%", d.letter))
-            return "expected one of v a e m s t n w X S M % after '%', flags, width and decimals";
+            return "one of v a e m s t n w X S M % after '%', flags, then width, then decimals";
         if (d.width > 20 || d.decimals > 9)
-            return "a width is at most 20, decimals at most 9";
+            return "a width of at most 20, decimals of at most 9";
         value = value || is_value(&d);
         directives++;
     }
     if (directives > 8)
         return "at most 8 directives";
-    return value ? NULL : "the line shows no value (%v, %a, %e or %m)";
+    return value ? NULL : "a value in the line (%v, %a, %e or %m)";
 }
 
 int sm_sim_shape_decimals(const struct sm_sim_shape_text *line)

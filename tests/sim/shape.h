@@ -3,13 +3,19 @@
  * are invented.
  *
  * A template is text with directives, each `%[flags][width][.decimals]letter`:
- *   v  the value          a  its magnitude          s  its sign alone, + or -
- *   e, m  the same two with an exponent             w  the status word: the shape's "ok", or
- * another t  temperature, °C    n  running number         %  a percent sign X  exclusive or, S sum,
- * both as two hex digits; M  CRC-16/MODBUS as four: over all bytes of the line so far except the
- * last (the mark); with flag - the last one too Flags: `+` sign always, `0` leading zeros, `,`
- * decimal comma, `k` in thousands (mV as V); `-` with s: only a minus, and a blank after it. A word
- * that the meter shows (open circuit, wait) goes where w is, else in place of the value,
+ *   v  the value
+ *   a  its magnitude
+ *   s  its sign alone, + or -; with flag `-` only a minus, and a blank after it
+ *   e  the value with an exponent; m  its magnitude with one
+ *   w  the status word: the shape's "ok", or another
+ *   t  temperature, °C
+ *   n  running number
+ *   %  a percent sign
+ *   X  exclusive or, S  sum: two hex digits; M  CRC-16/MODBUS: four. Over all bytes of the line so
+ *      far except the last (the mark); with flag `-` the last one too
+ * Flags: `+` sign always, `0` leading zeros, `,` decimal comma, `k` in thousands (mV as V). A
+ * five-figure value with a comma and one decimal is "%+0,7.1v".
+ * A word that the meter shows (open circuit, wait) goes where w is, else in place of the value,
  * right-aligned in its width. */
 #ifndef SM_SIM_SHAPE_H
 #define SM_SIM_SHAPE_H
@@ -42,7 +48,7 @@ struct sm_sim_shown { /* what the display shows */
 /* One of the shapes known by name (as in conf/profiles); false: no such name. */
 bool sm_sim_shape_known(const char *name, struct sm_sim_shape *ret_shape);
 
-/* NULL where the template can be used, else what is wrong with it. */
+/* NULL where the template can be used, else what is expected in its place. */
 const char *sm_sim_shape_wrong(const struct sm_sim_shape_text *line);
 
 /* The decimals of the first value that the template shows; -1: it has an exponent. */
