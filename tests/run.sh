@@ -62,9 +62,9 @@ one() { # what, command …
     fi
 }
 
-suite "gcc" build ""
-suite "clang" build/with-clang "-LE long-run" -DCMAKE_C_COMPILER=clang
-suite "sanitizers" build/with-sanitizers "-LE long-run" -DCMAKE_C_COMPILER=clang -DSM_SANITIZE=ON -DCMAKE_BUILD_TYPE=Debug
+suite "gcc" build "-LE proof"
+suite "clang" build/with-clang "-LE long-run|proof" -DCMAKE_C_COMPILER=clang
+suite "sanitizers" build/with-sanitizers "-LE long-run|proof" -DCMAKE_C_COMPILER=clang -DSM_SANITIZE=ON -DCMAKE_BUILD_TYPE=Debug
 
 echo "== valgrind =="
 for t in test_run test_judge test_core test_signal test_frame test_parse; do
