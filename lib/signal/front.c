@@ -22,6 +22,7 @@ void sm_front_init(struct sm_front *f, struct sm_pace pace, double noise, double
 {
     memset(f, 0, sizeof *f);
     f->swift_t_ns = INT64_MIN;
+    f->quiet = noise;
     sm_noise_init(&f->noise, noise);
     sm_step_init(&f->step, step);
     sm_front_pace(f, pace);

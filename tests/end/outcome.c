@@ -94,7 +94,7 @@ void outcomes_take(struct outcomes *o, const struct sm_event *e)
 }
 
 double outcomes_compare(const char *what, const struct outcomes *whole, const struct outcomes *cut,
-                        double share, double result_tolerance)
+                        double share, const double tolerance[SM_CLASS_COUNT])
 {
     double most = 0;
 
@@ -112,8 +112,9 @@ double outcomes_compare(const char *what, const struct outcomes *whole, const st
                      what, i, sm_event_kind_name(b->kind), b->item, b->good,
                      sm_result_state_name(b->state), b->why, sm_event_kind_name(a->kind), a->item,
                      a->good, sm_result_state_name(a->state), a->why);
-        const double within =
-            share * (a->kind == SM_EVENT_CAPTURE ? a->tolerance : result_tolerance);
+        const double within = share * (a->kind == SM_EVENT_CAPTURE ? a->tolerance
+                                       : a->kind == SM_EVENT_CHECK ? tolerance[SM_CLASS_CHECK]
+                                                                   : tolerance[SM_CLASS_SAMPLE]);
         if (!(fabs(a->value - b->value) <= within))
             fail_msg("%s: outcome %zu, %s of item %zu: %.17g, whole %.17g, may differ by %.3g",
                      what, i, sm_event_kind_name(a->kind), a->item, b->value, a->value, within);

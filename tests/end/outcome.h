@@ -31,11 +31,11 @@ struct outcomes {
 /* Takes what counts of an event; everything else is passed over. */
 void outcomes_take(struct outcomes *o, const struct sm_event *e);
 
-/* The same story, values within share times the tolerance of their capture (results: within share
- * times result_tolerance). Fails the test, naming `what`, where it is another. Gives the largest
- * difference of two captures, in tolerances. */
+/* The same story, values within share times the tolerance of their capture (checks and results:
+ * that of their class, in the unit of results). Fails the test, naming `what`, where it is another.
+ * Gives the largest difference of two captures, in tolerances. */
 double outcomes_compare(const char *what, const struct outcomes *whole, const struct outcomes *cut,
-                        double share, double result_tolerance);
+                        double share, const double tolerance[SM_CLASS_COUNT]);
 
 /* The last of a kind for an item's name; NULL none. */
 const struct outcome *outcomes_find(const struct outcomes *o, enum sm_event_kind kind,
