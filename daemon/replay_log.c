@@ -108,7 +108,8 @@ static int one(const struct options *o, const char *path, struct sm_carried **la
     } else {
         say_how(&told);
         if (v.after_bytes > 0)
-            printf("  %lld lines (%zu bytes) after the last stamp were never announced and are not "
+            printf("  %lld lines (%zu bytes) after the last stamp were never told to anybody and "
+                   "are not "
                    "run "
                    "again\n",
                    (long long)v.after_lines, v.after_bytes);

@@ -21,7 +21,7 @@ static const char HELP[] =
     "the points of the curves, or the readings of bench logs (files, or folders of them). Units\n"
     "stand in the header row or in a column of their own. A result has the state that it has now:\n"
     "files of the same folder that are later than those given are read for it, and named on\n"
-    "standard error. What follows a file's last stamp was never announced and is left out.\n"
+    "standard error. What follows a file's last stamp was never told to anybody and is left out.\n"
     "--run N  only what belongs to this run\n"
     "For information. Must not control a dosing pump.\n"
     "Exit status: 0 written; 1 a log does not verify; 2 could not be done.\n";
@@ -119,10 +119,10 @@ static size_t stamped(const struct sm_log_file *f, size_t n)
         return n;
     }
     if (f->verify.after_bytes > 0) {
-        snprintf(
-            what, sizeof what,
-            "%lld lines (%zu bytes) after the last stamp were never announced and are left out",
-            (long long)f->verify.after_lines, f->verify.after_bytes);
+        snprintf(what, sizeof what,
+                 "%lld lines (%zu bytes) after the last stamp were never told to anybody and are "
+                 "left out",
+                 (long long)f->verify.after_lines, f->verify.after_bytes);
         say(f->path, what);
     }
     return f->verify.stamped_bytes;

@@ -38,6 +38,7 @@ void sm_status_print(const json_t *status, bool method_note)
     add(&t, "", json_object_get(status, "meter"), ": ");
     add(&t, "", json_object_get(status, "sentence"), "");
     sm_text_add(&t, "\n");
+    add(&t, "  Port: ", json_object_get(json_object_get(status, "link"), "why"), "\n");
     add(&t, "  Not logged: ", json_object_get(missed, "why"), "\n");
     add(&t, "  Caution: ", json_object_get(status, "caution"), "\n");
     if (method_note)

@@ -120,7 +120,7 @@ static void say_good(const struct options *o, const struct sm_verify *v)
     char print[17] = "";
 
     if (v->stamps == 0) {
-        printf("  holds no stamp: nothing in it was announced\n");
+        printf("  holds no stamp: nothing in it was ever told to anybody\n");
         return;
     }
     printf("  entries %" PRId64 " to %" PRId64 ", %" PRId64 " stamps: ", v->first_n,
@@ -130,7 +130,7 @@ static void say_good(const struct options *o, const struct sm_verify *v)
         return;
     }
     printf("unchanged since signed by key %s (%s)", print,
-           o->key_file != NULL ? "the key given" : "not compared");
+           o->key_file != NULL ? "the key given" : "not compared: see --key");
     if (v->last_signed_n != v->last_stamp_n)
         printf(", signed up to entry %" PRId64, v->last_signed_n);
     printf("\n");
@@ -165,7 +165,8 @@ static void say_file(const struct options *o, const struct sm_log_file *f)
     }
     say_good(o, v);
     if (v->after_bytes > 0)
-        printf("  after its last stamp: %" PRId64 " line%s, %zu bytes, never announced\n",
+        printf("  after its last stamp: %" PRId64
+               " line%s, %zu bytes: a torn end, never told to anybody\n",
                v->after_lines, v->after_lines == 1 ? "" : "s", v->after_bytes);
     else if (!v->closed && v->stamps > 0)
         printf("  not closed: still being written, or ended by a crash\n");
@@ -240,6 +241,24 @@ static void say_chain(const struct options *o, struct outcome *out,
         printf("  from here on signed by another key: %s, before %s\n", print_b, print_a);
 }
 
+static bool same_meter(const struct sm_log_list *l, size_t a, size_t b)
+{
+    return a < l->n && b < l->n && strcmp(l->file[a].verify.meter, l->file[b].verify.meter) == 0;
+}
+
+/* What is not seen by looking at two files: nobody can tell from here whether files were taken away
+ * at either end, but for a stamp that was written down. */
+static void say_ends(const struct options *o, const struct sm_log_list *l, size_t i)
+{
+    const struct sm_verify *v = &l->file[i].verify;
+
+    if (l->n > 1 && v->ordinal > 1 && (i == 0 || !same_meter(l, i - 1, i)))
+        printf("  files before number %" PRId64 " are not here\n", v->ordinal);
+    if (is_good(o, v) && v->stamps > 0 && !same_meter(l, i, i + 1))
+        printf("  its last stamp, for the paper log: entry %" PRId64 ", %s\n", v->last_stamp_n,
+               v->last_stamp);
+}
+
 static int say_all(const struct options *o, const struct sm_log_list *l)
 {
     struct outcome out = { true, json_array(), json_array() };
@@ -253,6 +272,8 @@ static int say_all(const struct options *o, const struct sm_log_list *l)
             say_file(o, &l->file[i]);
         if (i > 0)
             say_chain(o, &out, &l->file[i - 1], &l->file[i]);
+        if (!o->json)
+            say_ends(o, l, i);
     }
     set(whole, "good", json_boolean(out.good));
     set(whole, "files", out.files);

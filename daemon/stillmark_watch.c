@@ -38,7 +38,7 @@ struct watched {
     bool asked;          /* a status is on its way */
     bool raw;            /* "not logged" was said and nothing was logged since */
     bool results;        /* the caution of results was said */
-    json_int_t moved_to; /* item that the probe was last said to be in; 0: none since its capture */
+    json_int_t moved_to; /* item whose turn was said and that has no value yet; 0: none */
     char next[NEXT_SIZE], caution[CAUTION_SIZE]; /* of the last status */
 };
 
@@ -117,6 +117,8 @@ static void say_status(const struct watch *w, struct watched *m, const json_t *s
         sm_status_print(status, true);
         fflush(stdout);
     } else {
+        if (m->moved_to != 0) /* what comes after it is told when it has its value */
+            memcpy(next, m->next, sizeof next);
         if (is_new(next, m->next))
             print(w, m, status, next);
         if (is_new(caution, m->caution))
@@ -160,6 +162,20 @@ static void say_purpose(const struct watch *w, struct watched *m, const json_t *
     print(w, m, o, "Results are for information. They must not control a dosing pump.");
 }
 
+/* Ends the turn of the item that was said last. */
+static bool ends_turn(const json_t *o)
+{
+    static const char *const acts[] = { "sheet", "skip", "pause", "resume" };
+    const char *act = json_string_value(json_object_get(o, "act"));
+
+    if (sm_talk_is(o, "capture") || sm_talk_is(o, "not-settled"))
+        return true;
+    for (size_t i = 0; act != NULL && i < sizeof acts / sizeof acts[0]; i++)
+        if (sm_talk_is(o, "act") && strcmp(act, acts[i]) == 0)
+            return true;
+    return false;
+}
+
 /* On its way: a probe that leaves a beaker changes the value first (were it to stay so, the capture
  * and its question say it), and air and rinse move it more than once into the same item. */
 static bool is_on_the_way(struct watched *m, const json_t *o)
@@ -167,7 +183,7 @@ static bool is_on_the_way(struct watched *m, const json_t *o)
     const json_t *by = json_object_get(o, "by");
     const json_int_t item = json_integer_value(json_object_get(o, "item"));
 
-    if (sm_talk_is(o, "capture"))
+    if (ends_turn(o))
         m->moved_to = 0;
     if (!sm_talk_is(o, "moved"))
         return false;

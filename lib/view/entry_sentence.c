@@ -158,9 +158,11 @@ static void curve(const json_t *e, struct sm_text *t)
 
 static void check(const json_t *e, struct sm_text *t)
 {
+    double found;
+
     sm_text_add(t, is_true(e, "pass") ? "Check passed: " : "Check failed: ");
     add(t, e, "name");
-    add_after(t, " ", e, "why");
+    add_after(t, real(e, "found", &found) ? " " : ": ", e, "why");
 }
 
 static void result(const json_t *e, struct sm_text *t)
@@ -234,7 +236,13 @@ static void moved(const json_t *e, struct sm_text *t)
         return;
     }
     add_after(t, " (", e, "why");
-    sm_text_add(t, has(e, "why") ? "): now in " : ": now in ");
+    sm_text_add(t, has(e, "why") ? "): " : ": ");
+    if (strcmp(by, "transit") != 0) {
+        sm_text_add(t, "now in ");
+        (void)sm_item_sentence(e, t);
+        return;
+    }
+    sm_text_add(t, "what settles next is "); /* it may still be in air or rinse */
     (void)sm_item_sentence(e, t);
 }
 

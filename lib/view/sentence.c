@@ -28,7 +28,7 @@ static void state_sentence(const struct sm_core_status *s, int64_t for_ns, struc
         sm_text_add(t, ": check that it is on and sending.");
         break;
     case SM_STATE_WAITING:
-        sm_text_add(t, "Waiting for the first reading.");
+        sm_text_add(t, "Waiting for readings.");
         break;
     case SM_STATE_OPEN:
         sm_text_add(t, "The probe is in air.");
@@ -81,7 +81,8 @@ void sm_sentence(const struct sm_core_status *s, int64_t now_t_ns, struct sm_tex
     state_sentence(s, now_t_ns - s->since_t_ns, t);
     sheet_sentence(s, t);
     if (s->curve_refused)
-        sm_text_add(t, " The calibration curve was refused: calibrate again.");
+        sm_text_add(t, " The calibration curve was refused: pour fresh standards and hand the "
+                       "sheet over again.");
     if (s->questions > 0)
         sm_text_add(t,
                     " It is not certain which beaker the probe is in: press next when it is in the "

@@ -74,9 +74,11 @@ static void expect(char **argv, int want, const char *text)
 static void whole_files_verify_in_whatever_order_they_are_given(void **state)
 {
     (void)state;
-    RUN(0, "unchanged since signed by key fe812c12f3ab4ce6 (not compared)\n", file[0]);
+    RUN(0, "unchanged since signed by key fe812c12f3ab4ce6 (not compared: see --key)\n", file[0]);
     RUN(0, "3 files: all verify", file[2], file[0], file[1]);
     RUN(0, "3 files: all verify", scratch.path);
+    RUN(0, "files before number 413 are not here\n", file[2], file[1]);
+    RUN(0, "its last stamp, for the paper log: entry ", file[0]);
     RUN(0, "\"good\":true", "--json", file[0], file[1]);
 }
 

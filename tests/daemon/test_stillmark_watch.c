@@ -61,7 +61,8 @@ static void status_says_a_sentence_for_each_meter_and_what_else_is_to_be_known(v
 {
     static const struct fake_rule rules[] = {
         { "\"k\":\"status\"",
-          "{\"k\":\"status\",\"meter\":\"bench-1\",\"meters\":2,\"sentence\":\"Starting.\"}\n"
+          "{\"k\":\"status\",\"meter\":\"bench-1\",\"meters\":2,\"sentence\":\"Starting.\","
+          "\"link\":{\"state\":\"lost\",\"why\":\"it is not there\"}}\n"
           "{\"k\":\"status\",\"meter\":\"bench-2\",\"meters\":2,\"sentence\":\"Not logging: see "
           "why.\",\"not_logged\":{\"why\":\"disk full\"},\"caution\":\"Goggles.\",\"method_note\":"
           "\"By a prescribed rule.\"}\n",
@@ -73,6 +74,7 @@ static void status_says_a_sentence_for_each_meter_and_what_else_is_to_be_known(v
     (void)state;
     expect(&s, 0,
            "bench-1: Starting.\n"
+           "  Port: it is not there\n"
            "bench-2: Not logging: see why.\n"
            "  Not logged: disk full\n"
            "  Caution: Goggles.\n"
@@ -179,6 +181,30 @@ static void watch_says_what_comes_next_and_its_caution_once(void **state)
     forget(&s);
 }
 
+static void watch_says_what_comes_after_an_item_when_the_item_has_its_value(void **state)
+{
+#define MOVED_TO_B4 HEAD "\"moved\",\"by\":\"transit\",\"item\":1,\"name\":\"B4\"}\n"
+    static const struct fake_rule rules[] = {
+        { ASKED,
+          NEXT("B4", "") MOVED_TO_B4 NEXT("B7", "Goggles.") MOVED_TO_B4 HEAD
+          "\"capture\",\"item\":1,\"name\":\"B4\"}\n" NEXT("B7", "Goggles."),
+          true },
+        { "\"k\":\"status\"", FIRST, false },
+        { NULL, NULL, false }
+    };
+    struct said s = run(rules, sm_stillmark_watch, NO_WORDS);
+
+    (void)state;
+    expect(&s, 2,
+           "bench-2: \n"
+           "03:41:09 The probe was moved: what settles next is B4\n"
+           "03:41:09 Caution: Goggles.\n"
+           "03:41:09 Settled: B4\n"
+           "03:41:09 Next: standard B7\n",
+           "the daemon closed the connection\n");
+    forget(&s);
+}
+
 static void watch_says_once_that_nothing_is_logged_until_it_is_again(void **state)
 {
 #define RAW HEAD "\"raw\",\"b\":\"7\",\"note\":\"not logged\"}\n"
@@ -271,6 +297,7 @@ int main(void)
         cmocka_unit_test(status_without_an_answer_exits_2),
         cmocka_unit_test(watch_says_what_is_worth_a_line_with_its_local_time),
         cmocka_unit_test(watch_says_what_comes_next_and_its_caution_once),
+        cmocka_unit_test(watch_says_what_comes_after_an_item_when_the_item_has_its_value),
         cmocka_unit_test(watch_says_once_that_nothing_is_logged_until_it_is_again),
         cmocka_unit_test(watch_follows_every_meter_and_names_it),
         cmocka_unit_test(watch_as_json_passes_everything_on),

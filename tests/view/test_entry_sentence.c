@@ -67,9 +67,14 @@ static void each_kind_is_said_in_a_sentence(void **state)
           "Curve refused: slope 88.0 %, at least 90 %. offset" },
         { "{\"k\":\"curve\",\"accepted\":false}",
           "Curve refused: no curve goes through these standards" },
-        { "{\"k\":\"check\",\"pass\":false,\"name\":\"C7\",\"kind\":\"check\",\"why\":\"reads 7.3 "
-          "pH\"}",
+        { "{\"k\":\"check\",\"pass\":false,\"name\":\"C7\",\"kind\":\"check\",\"found\":7.3,"
+          "\"why\":"
+          "\"reads 7.3 pH\"}",
           "Check failed: C7 reads 7.3 pH" },
+        { "{\"k\":\"check\",\"pass\":false,\"name\":\"C7\",\"kind\":\"check\",\"why\":\"there is "
+          "no "
+          "curve\"}",
+          "Check failed: C7: there is no curve" },
         { "{\"k\":\"release\",\"results\":[1,2,3],\"why\":\"the check passed\"}",
           "3 results released: the check passed" },
         { "{\"k\":\"hold\",\"results\":[1],\"why\":\"the check failed\"}",
@@ -83,7 +88,7 @@ static void each_kind_is_said_in_a_sentence(void **state)
           "The probe was moved: now in standard B4" },
         { "{\"k\":\"moved\",\"by\":\"transit\",\"name\":\"final\",\"kind\":\"sample\",\"why\":"
           "\"air\"}",
-          "The probe was moved (air): now in sample final" },
+          "The probe was moved (air): what settles next is sample final" },
         { "{\"k\":\"moved\",\"by\":\"value\",\"why\":\"the value changed: same beaker "
           "disturbed?\"}",
           "The value changed: same beaker disturbed?" },
