@@ -138,6 +138,7 @@ static void begin_file(struct sm_meter *m, const struct sm_now *now, struct sm_e
     if (m->group != NULL)
         sm_file_name(m->group->begins, m->ordinal, now->utc_us);
     sm_meter_stamp(m, now, true);
+    o->key = ""; /* what it pointed to ends here */
     m->shown_n = m->n;
 }
 

@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* meter_log.c: entries into groups, groups to the writer, announced when they are on disk; and what
  * happens when they do not get there. */
+#include <assert.h>
 #include <stdarg.h>
 #include <stdio.h>
 #include <stdlib.h>
@@ -163,6 +164,7 @@ static void on_disk(struct sm_meter *m, const struct sm_group *g, const struct s
 /* The groups come back in the order in which they went. */
 static void take_back(struct sm_meter *m, struct sm_group *g)
 {
+    assert(g != NULL);
     if (m->under_way == g) {
         m->under_way = g->next;
         if (m->under_way == NULL)

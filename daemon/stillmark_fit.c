@@ -285,6 +285,7 @@ static bool read_points(const char *path, const char *text, size_t n, struct fit
 
 static bool fit_points(const char *path, struct fit *f)
 {
+    // the points are freed by sm_stillmark_fit: NOLINTNEXTLINE(clang-analyzer-unix.Malloc)
     const enum sm_status status =
         sm_curve_fit(f->model, f->points, f->n_points, ISOPOTENTIAL_PH, &f->curve);
     const size_t need = sm_model_coefficients(f->model) + 1;

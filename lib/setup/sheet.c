@@ -186,7 +186,7 @@ static void refuse_own_lot(const struct sheet_reader *s, const struct sm_node *l
     const struct sm_standard *all = s->setup->standards.list;
     const struct sm_node *node = list->child;
 
-    for (size_t i = 0; i < s->sheet->n; i++, node = node->next) {
+    for (size_t i = 0; i < s->sheet->n && node != NULL; i++, node = node->next) {
         const struct sm_item *check = &s->sheet->item[i];
 
         if (check->kind != SM_ITEM_CHECK || check->standard < 0)

@@ -3,6 +3,7 @@
  * and do not come back from deep nesting. */
 #include "setup/tree.h"
 
+#include <assert.h>
 #include <stdint.h>
 #include <stdlib.h>
 #include <string.h>
@@ -314,6 +315,7 @@ static enum sm_status take(struct builder *b, const yaml_event_t *e)
         return open_node(b, e, SM_NODE_MAP);
     case YAML_SEQUENCE_END_EVENT:
     case YAML_MAPPING_END_EVENT:
+        assert(b->open != NULL); /* libyaml ends only what it began */
         b->open = b->open->parent;
         b->depth--;
         return SM_OK;

@@ -43,7 +43,9 @@ void sm_trace_destroy(struct sm_trace *t)
 /* Seconds that print as short as the recording's own. */
 static double seconds(int64_t t_ns)
 {
-    return t_ns % NS_PER_US == 0 ? (double)(t_ns / NS_PER_US) / 1e6 : (double)t_ns / 1e9;
+    const int64_t t_us = t_ns / NS_PER_US;
+
+    return t_us * NS_PER_US == t_ns ? (double)t_us / 1e6 : (double)t_ns / 1e9;
 }
 
 enum sm_status sm_trace_feed(struct sm_trace *t, double time_s, double value, double step,
