@@ -99,6 +99,7 @@ struct seen {
 
 struct watch {
     const struct sm_sim_truth *truth;
+    double *value;  /* [truth->n] the latest of them */
     unsigned *got;  /* [truth->n] captures in each stay */
     unsigned *kind; /* [truth->n] response of each beaker */
     double *from;   /* [truth->n] where the signal stood when each beaker began */
@@ -140,14 +141,17 @@ static bool near(const struct watch *w, double a, double b)
     return fabs(a - b) <= 3 * w->tolerance; /* no departure from a captured value */
 }
 
-/* A beaker that reads like the one before, or in which the signal stands where it stood: there is
- * nothing to tell by. */
+/* A beaker that reads like the one before, or like what was captured there, or in which the signal
+ * stands where it stood: there is nothing to tell by. */
 static bool alike_beaker(const struct watch *w, int i)
 {
     const struct sm_sim_stay *s = w->truth->stay;
     const int before = beaker_before(w->truth, i);
 
-    return (before >= 0 && near(w, s[i].end, s[before].end)) || near(w, s[i].end, w->from[i]);
+    if (before >= 0 && (near(w, s[i].end, s[before].end) ||
+                        (w->got[before] > 0 && near(w, s[i].end, w->value[before]))))
+        return true;
+    return near(w, s[i].end, w->from[i]);
 }
 
 /* A rinse that reads like the beaker before it, or like what the air happened to read on the way
@@ -212,6 +216,7 @@ static void captured(struct watch *w, const struct log_maker *m, double value)
             w->count->doubles++;
         else
             w->count->by_value += w->by == SM_MOVED_VALUE;
+        w->value[at] = value;
         f->captures++;
         f->off += fabs(value - s->end) > w->tolerance;
     }
@@ -362,8 +367,9 @@ static void session(const struct series *s, uint64_t seed, struct count *count)
     w.tolerance = r.tolerance;
     w.stray_s = fmin(s->dwell_s, 22) / 22 + 2 / sc.rate_per_s; /* lib/signal/pace.h: odd_ns */
     w.got = calloc(truth.n, sizeof *w.got);
+    w.value = calloc(truth.n, sizeof *w.value);
     look_at_beakers(&w, &sc);
-    assert_non_null(w.got);
+    assert_true(w.got != NULL && w.value != NULL);
     prepare(&m, s, r.tolerance, &setup, &method);
     m.event = on_event;
     m.arg = &w;
@@ -372,6 +378,7 @@ static void session(const struct series *s, uint64_t seed, struct count *count)
     look_for_lost(&w);
     log_maker_finish(&m);
     free(w.got);
+    free(w.value);
     free(w.kind);
     free(w.from);
     free(w.seen);
