@@ -92,7 +92,9 @@ static void read_step(const json_t *status, char next[NEXT_SIZE], char caution[C
     sm_text_init(&t, next, NEXT_SIZE);
     sm_text_add(&t, "Next: ");
     if (!sm_item_sentence(json_object_get(status, "next"), &t))
-        next[0] = '\0';
+        sm_text_copy(next, NEXT_SIZE,
+                     json_is_true(json_object_get(status, "sheet_done")) ? "The sheet is done."
+                                                                         : "");
     sm_text_init(&t, caution, CAUTION_SIZE);
     if (json_string_length(text) == 0)
         return;

@@ -70,11 +70,15 @@ half a second. The method is made for this demonstration: a value is taken when 
 2 s lie within the tolerance and the probe has been in place for 3 s. Nobody touches anything: the probe
 goes from beaker to beaker through air and rinse water. About two and a half minutes.
 
+The meter, its bench sheet and the analyst are all called "try". What stands behind ± covers 95 % (of the
+reading and the curve; not of the buffers themselves). A result is provisional until the next check has
+passed; then it is released. Now "stillmark watch", while the sheet is handed over with "stillmark sheet":
+
 T
-$bin/stillmark analyst try --socket "$sock" || exit 2
-$bin/stillmark sheet "$work/conf/sheets/try.yaml" --socket "$sock" || exit 2
+$bin/stillmark analyst try --socket "$sock" >/dev/null || exit 2
 $bin/stillmark watch --socket "$sock" &
 watch=$!
+$bin/stillmark sheet "$work/conf/sheets/try.yaml" --socket "$sock" >/dev/null || exit 2
 tries=0
 until $bin/stillmark status --json --socket "$sock" 2>/dev/null | grep -q '"sheet_done":true'; do
     tries=$((tries + 1))
@@ -91,17 +95,22 @@ echo
 echo "The results, as the log has them (the whole table: stillmark export, below):"
 $bin/stillmark export "$log" >"$work/results.csv" || exit 1
 tr -d '\r' <"$work/results.csv" | awk -F, '
-    NR == 1 { for (i = 1; i <= NF; i++) at[$i] = i
-              printf "  %-4s  %-14s  %-20s  %-11s  %s\n", "item", "sample", "result", "state", "temperature"
-              next }
-    { printf "  %-4s  %-14s  %-20s  %-11s  %.1f °C\n", $at["item"], $at["name"], $at["shown"], $at["state"],
-             $at["temperature (°C)"] }'
+    FILENAME != "-" { truth[$2] = $6; next } # of the simulator: name, true value
+    FNR == 1 { for (i = 1; i <= NF; i++) at[$i] = i
+               printf "  %-4s  %-14s  %-20s %-11s  %-11s  %s\n", "item", "sample", "result", "state", "temperature",
+                      "simulated as"
+               next }
+    { printf "  %-4s  %-14s  %-20s  %-11s  %.1f °C      %.2f pH\n", $at["item"], $at["name"], $at["shown"],
+             $at["state"], $at["temperature (°C)"], truth[$at["name"]] }' "$work/truth.csv" -
 echo
 echo "The log of it all:"
 echo "$log"
 echo
 verified=0; replayed=0
+echo "Is it as it was written and signed? (stillmark verify)"
 $bin/stillmark verify "$log" || verified=1
+echo
+echo "Does the same come out when it is run again? (stillmark-replay)"
 $bin/stillmark-replay "$log" || replayed=1
 cat <<T
 
@@ -113,6 +122,7 @@ To look further:
   $bin/stillmark verify $log
   $bin/stillmark-replay $log
   less $work/truth.csv        (what the simulator knows to be true)
+The folder $work can be deleted.
 Results are for information. They must not control a dosing pump.
 T
 [ $verified = 0 ] && [ $replayed = 0 ]

@@ -187,7 +187,8 @@ static void watch_says_what_comes_after_an_item_when_the_item_has_its_value(void
     static const struct fake_rule rules[] = {
         { ASKED,
           NEXT("B4", "") MOVED_TO_B4 NEXT("B7", "Goggles.") MOVED_TO_B4 HEAD
-          "\"capture\",\"item\":1,\"name\":\"B4\"}\n" NEXT("B7", "Goggles."),
+          "\"capture\",\"item\":1,\"name\":\"B4\"}\n" NEXT("B7", "Goggles.") HEAD
+          "\"capture\",\"item\":2,\"name\":\"B7\"}\n" ONE "\"sheet_done\":true}\n",
           true },
         { "\"k\":\"status\"", FIRST, false },
         { NULL, NULL, false }
@@ -200,7 +201,9 @@ static void watch_says_what_comes_after_an_item_when_the_item_has_its_value(void
            "03:41:09 The probe was moved: what settles next is B4\n"
            "03:41:09 Caution: Goggles.\n"
            "03:41:09 Settled: B4\n"
-           "03:41:09 Next: standard B7\n",
+           "03:41:09 Next: standard B7\n"
+           "03:41:09 Settled: B7\n"
+           "03:41:09 The sheet is done.\n",
            "the daemon closed the connection\n");
     forget(&s);
 }
