@@ -205,6 +205,8 @@ void sm_meter_begin(struct sm_meter *m, const struct sm_now *now, struct sm_begi
     if (b->has_state) {
         *m->carried = b->state.carried;
         sm_carried_interrupt(m->carried);
+        if (m->identity[0] == '\0') /* the adapter of the daemon's life before this one */
+            sm_text_copy(m->identity, sizeof m->identity, m->carried->meter.adapter);
         o.aged_ns = age(m, now, b);
         sm_meter_keep_sheet(m, b->state.sheet_file, b->state.sheet_text, b->state.sheet_text_n);
     }

@@ -87,6 +87,7 @@ struct sm_carried {
     char sensor[SM_NAME_SIZE];
     struct {
         char identity[512], settings[512];
+        char adapter[512]; /* what it is plugged in through: no other is taken without leave */
     } meter;
     int64_t runs;     /* sheets handed over ever */
     int64_t captures; /* captures numbered ever */

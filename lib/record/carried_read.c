@@ -276,6 +276,7 @@ static void take_meter(struct sm_taking *k, const json_t *o, struct sm_carried *
         return;
     sm_fields_text(&f, "identity", c->meter.identity, sizeof c->meter.identity);
     sm_fields_text(&f, "settings", c->meter.settings, sizeof c->meter.settings);
+    sm_fields_text(&f, "adapter", c->meter.adapter, sizeof c->meter.adapter);
     sm_fields_end(&f);
 }
 

@@ -16,7 +16,7 @@
  *   acts         [ids], oldest first
  *   channel      noise, long_noise, step, usual_wait {standard, check, sample} (s), captures
  *   sensor       its name
- *   meter        identity, settings
+ *   meter        identity, settings, adapter
  *   cups         (not written yet) */
 #include "record/carried.h"
 
@@ -220,11 +220,13 @@ static void write_channel(struct sm_text *t, const struct sm_channel_memory *m)
 static void write_meter(struct sm_text *t, const struct sm_carried *c)
 {
     sm_json_words(t, "sensor", c->sensor);
-    if (c->meter.identity[0] == '\0' && c->meter.settings[0] == '\0')
+    if (c->meter.identity[0] == '\0' && c->meter.settings[0] == '\0' &&
+        c->meter.adapter[0] == '\0')
         return;
     sm_json_object(t, "meter");
     sm_json_words(t, "identity", c->meter.identity);
     sm_json_words(t, "settings", c->meter.settings);
+    sm_json_words(t, "adapter", c->meter.adapter);
     sm_json_close_object(t);
 }
 

@@ -144,6 +144,7 @@ static void make_rest(struct made_up *m, struct sm_carried *c)
     made_up_text(m, c->sensor, sizeof c->sensor, true);
     made_up_text(m, c->meter.identity, sizeof c->meter.identity, false);
     made_up_text(m, c->meter.settings, sizeof c->meter.settings, false);
+    made_up_text(m, c->meter.adapter, sizeof c->meter.adapter, false);
 }
 
 static void anything_carried_comes_back_bit_by_bit(void **state)
