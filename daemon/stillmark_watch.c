@@ -21,6 +21,7 @@
 #define COMMAND "stillmark watch"
 #define NEXT_SIZE (SM_NAME_SIZE * 4) /* a name of bytes that are shown as \\xNN */
 #define CAUTION_SIZE 2048
+#define MOVED_SIZE 512
 
 static const char HELP[] =
     "stillmark watch [--meter M] [--from N] [--json] [--socket PATH]\n\n"
@@ -34,11 +35,12 @@ static const char HELP[] =
 struct watched {
     char meter[SM_METER_SIZE];
     struct sm_talk *talk;
-    bool greeted;        /* the first status was said */
-    bool asked;          /* a status is on its way */
-    bool raw;            /* "not logged" was said and nothing was logged since */
-    bool results;        /* the caution of results was said */
-    json_int_t moved_to; /* item whose turn was said and that has no value yet; 0: none */
+    bool greeted;           /* the first status was said */
+    bool asked;             /* a status is on its way */
+    bool raw;               /* "not logged" was said and nothing was logged since */
+    bool results;           /* the caution of results was said */
+    json_int_t moved_to;    /* item whose turn was said and that has no value yet; 0: none */
+    char moved[MOVED_SIZE]; /* the last that was said of the probe's moving, in this turn */
     char next[NEXT_SIZE], caution[CAUTION_SIZE]; /* of the last status */
 };
 
@@ -182,15 +184,20 @@ static bool ends_turn(const json_t *o)
  * and its question say it), and air and rinse move it more than once into the same item. */
 static bool is_on_the_way(struct watched *m, const json_t *o)
 {
-    const json_t *by = json_object_get(o, "by");
+    const char *by = json_string_value(json_object_get(o, "by"));
+    const char *why = json_string_value(json_object_get(o, "why"));
     const json_int_t item = json_integer_value(json_object_get(o, "item"));
 
-    if (ends_turn(o))
+    if (ends_turn(o)) {
         m->moved_to = 0;
+        m->moved[0] = '\0';
+    }
     if (!sm_talk_is(o, "moved"))
         return false;
-    if (json_is_string(by) && strcmp(json_string_value(by), "value") == 0)
+    if (by != NULL && strcmp(by, "value") == 0)
         return true;
+    if (item == 0 && why != NULL && strcmp(why, "first reading") == 0)
+        return true; /* at each sheet and pause, too: the link's line says enough */
     if (item != 0 && item == m->moved_to)
         return true;
     m->moved_to = item;
@@ -210,6 +217,11 @@ static void say_entry(const struct watch *w, struct watched *m, const json_t *o)
     sm_text_init(&t, buf, sizeof buf);
     if (!sm_entry_sentence(o, &t))
         return;
+    if (sm_talk_is(o, "moved")) {
+        if (strcmp(buf, m->moved) == 0)
+            return; /* nothing new: it was moved again */
+        sm_text_copy(m->moved, sizeof m->moved, buf);
+    }
     m->raw = raw;
     say_purpose(w, m, o);
     print(w, m, o, buf);
