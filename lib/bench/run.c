@@ -87,6 +87,11 @@ bool sm_run_standards_done(const struct sm_carried_run *r, const struct sm_sheet
     return r->next >= r->n_items || sheet->item[r->next].kind != SM_ITEM_STANDARD;
 }
 
+bool sm_run_checks_done(const struct sm_carried_run *r, const struct sm_sheet *sheet)
+{
+    return r->next >= r->n_items || sheet->item[r->next].kind != SM_ITEM_CHECK;
+}
+
 bool sm_run_closing(const struct sm_sheet *sheet, size_t i)
 {
     for (; i < sheet->n; i++) {

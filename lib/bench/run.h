@@ -45,6 +45,10 @@ SM_MUST_CHECK enum sm_status sm_run_skip(struct sm_carried_run *r);
 /* A standard has just been captured: is the row of standards it belongs to complete? */
 bool sm_run_standards_done(const struct sm_carried_run *r, const struct sm_sheet *sheet);
 
+/* A check has just been captured: is the set of checks it belongs to (those that follow one
+ * another) complete? */
+bool sm_run_checks_done(const struct sm_carried_run *r, const struct sm_sheet *sheet);
+
 /* Item i is the last check of the sheet with nothing but checks behind it. */
 bool sm_run_closing(const struct sm_sheet *sheet, size_t i);
 

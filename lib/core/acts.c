@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* acts.c: what the analyst tells the program, done or refused with the reason. */
+#include "bench/fits.h"
 #include "core/inside.h"
 
 #include <stdarg.h>
@@ -29,6 +30,16 @@ static bool repeated(const struct sm_core *c, const char *id)
     return false;
 }
 
+/* 1 to 64 printable ASCII characters. */
+static bool id_ok(const char *id)
+{
+    const char *at = id;
+
+    while (*at > 0x20 && *at < 0x7f)
+        at++;
+    return at > id && *at == '\0';
+}
+
 static void remember(struct sm_carried *now, const char *id)
 {
     if (now->n_acts == SM_ACT_IDS_MAX) {
@@ -48,23 +59,16 @@ static bool up_to_date(struct sm_core *c, const struct sm_act *act)
     return false;
 }
 
-static const struct sm_standard *standard_of(const struct sm_core *c, const struct sm_item *i)
-{
-    return i->standard < 0 || (size_t)i->standard >= c->setup->standards->n
-               ? NULL
-               : &c->setup->standards->list[i->standard];
-}
-
 /* An expired lot is never used; too many standards have no place. False: refused. */
 static bool sheet_is_possible(struct sm_core *c, const struct sm_sheet *sheet)
 {
     size_t standards = 0;
 
     for (size_t i = 0; i < sheet->n; i++) {
-        const struct sm_standard *s = standard_of(c, &sheet->item[i]);
+        const struct sm_standard *s = sm_core_standard(c, &sheet->item[i]);
 
         standards += sheet->item[i].kind == SM_ITEM_STANDARD;
-        if (s != NULL && s->has_expires && sm_utc_day(c->in.utc_us) > s->expires_day) {
+        if (s != NULL && sm_core_expired(c, s)) {
             refuse(c, "item %zu: lot %.60s of %.60s has expired: open a new one and enter its lot",
                    i + 1, s->lot, s->name);
             return false;
@@ -77,19 +81,35 @@ static bool sheet_is_possible(struct sm_core *c, const struct sm_sheet *sheet)
     return true;
 }
 
+/* The sheet's method goes with the meter and is in force from now. False: refused. */
+static bool method_is_possible(struct sm_core *c, int method)
+{
+    char why[SM_REASON_SIZE] = "the sheet's method is not possible with this meter";
+
+    if (method >= 0 && (size_t)method < c->setup->n_methods &&
+        sm_method_fits(&c->setup->method[method], c->setup->profile, why) == SM_OK &&
+        sm_core_use_method(c, (size_t)method) == SM_OK)
+        return true;
+    refuse(c, "%s", why);
+    return false;
+}
+
 static void on_sheet(struct sm_core *c, const struct sm_act *act)
 {
     if (act->sheet == NULL) {
-        refuse(c, "%s", act->sheet_why);
+        refuse(c, "%s", act->sheet_why[0] != '\0' ? act->sheet_why : "there is no sheet in it");
         return;
     }
-    if (!sheet_is_possible(c, act->sheet))
-        return;
-    if (sm_core_use_method(c, (size_t)act->sheet->method) != SM_OK) {
-        refuse(c, "the sheet's method is not possible with this meter's profile");
+    if (!sm_name_ok(act->sheet->file, strlen(act->sheet->file))) {
+        refuse(c, "a sheet needs a file's name of at most 64 characters");
         return;
     }
+    if (!sheet_is_possible(c, act->sheet) || !method_is_possible(c, act->sheet->method))
+        return;
     sm_core_hold_provisional(c, 0, "their run ended without a closing check");
+    if (c->now->curve.n ==
+        0) /* the standards of a row that was not finished are no part of a new */
+        memset(&c->now->curve, 0, sizeof c->now->curve);
     *c->sheet = *act->sheet;
     c->has_sheet = true;
     sm_run_begin(&c->now->run, ++c->now->runs, c->sheet);
@@ -98,7 +118,20 @@ static void on_sheet(struct sm_core *c, const struct sm_act *act)
     memset(&c->now->checks, 0, sizeof c->now->checks);
     c->now->n_questions = 0;
     memset(&c->immersion, 0, sizeof c->immersion);
+    c->marked = false;
     c->change_n = c->in.n;
+}
+
+/* An item is open, and next would mean another beaker: it has been marked already and the probe has
+ * moved since, or the probe has been in it for longer than the dwell. */
+static bool next_is_ambiguous(const struct sm_core *c)
+{
+    const struct sm_immersion *im = &c->immersion;
+
+    if (!im->begun || im->captured || im->not_settled || c->now->run.left)
+        return false;
+    return (c->marked && !im->marked) ||
+           (im->given && c->in.t_ns - im->began_t_ns >= c->method->rule.dwell_ns);
 }
 
 static void on_next(struct sm_core *c, const struct sm_act *act)
@@ -121,9 +154,53 @@ static void on_next(struct sm_core *c, const struct sm_act *act)
         refuse(c, "every item of the sheet has been measured");
         return;
     }
+    if (c->has_sheet && next_is_ambiguous(c)) {
+        refuse(c, "item %zu, %s, has no capture yet: wait for it, or skip it with a reason",
+               c->now->run.next + 1, c->sheet->item[c->now->run.next].name);
+        return;
+    }
     c->mark_of = c->in.n;
     c->now->n_questions = 0; /* the mark says where the probe is: what was open is answered */
     (void)!sm_signal_feed(c->signal, &mark);
+}
+
+/* Surely not in item run.next, nor beyond it: in air, in what was measured last, or where it stood
+ * when the sheet was handed over. */
+static bool before_next(const struct sm_core *c)
+{
+    const struct sm_immersion *im = &c->immersion;
+    const struct sm_signal_start place = sm_core_place(c);
+
+    if (c->now->run.left)
+        return false;
+    if (place.place == SM_PLACE_LEFT)
+        return c->in_air;
+    if (place.place == SM_PLACE_STILL)
+        return c->now->last.item != 0 || im->early;
+    return sm_run_measured(&c->now->run) == 0 && !im->begun;
+}
+
+/* The item whose turn it is is passed over. Where the probe may be in it, or in the one after it
+ * already, only a mark goes on. */
+static void skip(struct sm_core *c)
+{
+    struct sm_immersion *im = &c->immersion;
+    const size_t skipped = c->now->run.next;
+    const bool sure = before_next(c);
+
+    if (!im->captured && im->begun && !im->early) {
+        im->given = false;
+        memset(&im->where, 0, sizeof im->where);
+        im->where.kind = SM_ITEM_NONE;
+        sm_text_copy(im->why_not_given, sizeof im->why_not_given,
+                     "an item was skipped: press next when the probe is in the next one");
+    }
+    (void)!sm_run_skip(&c->now->run); /* there is one: seen by the caller */
+    c->marked = false;
+    if (!sure)
+        sm_core_unsure(c);
+    c->change_n = c->in.n;
+    sm_core_skipped(c, skipped);
 }
 
 static void on_skip(struct sm_core *c, const struct sm_act *act)
@@ -138,13 +215,7 @@ static void on_skip(struct sm_core *c, const struct sm_act *act)
         refuse(c, "an item is skipped with a reason only: skip --why \"…\"");
         return;
     }
-    if (c->immersion.given) {
-        c->immersion.given = false;
-        memset(&c->immersion.where, 0, sizeof c->immersion.where);
-        c->immersion.where.kind = SM_ITEM_NONE;
-    }
-    (void)!sm_run_skip(&c->now->run); /* there is one: seen above */
-    c->change_n = c->in.n;
+    skip(c);
 }
 
 static void on_analyst(struct sm_core *c, const struct sm_act *act)
@@ -176,7 +247,7 @@ static void on_temperature(struct sm_core *c, const struct sm_act *act)
     c->now->temperature.has = true;
     c->now->temperature.value_c = act->temperature_c;
     sm_text_copy(c->now->temperature.who, sizeof c->now->temperature.who,
-                 act->who[0] != '\0' ? act->who : c->now->on_duty);
+                 sm_name_ok(act->who, strlen(act->who)) ? act->who : c->now->on_duty);
     c->temperature_born_t_ns = c->in.t_ns;
 }
 
@@ -190,6 +261,7 @@ static void on_rest(struct sm_core *c, bool rest)
     c->rest_born_t_ns = c->in.t_ns;
     if (rest)
         sm_core_lost_track(c);
+    c->open_circuit = false;
     memset(&c->immersion, 0, sizeof c->immersion);
     sm_signal_rest(c->signal, rest);
 }
@@ -207,6 +279,10 @@ void sm_core_act(struct sm_core *c, const struct sm_act *act)
     sm_text_copy(c->answer.id, sizeof c->answer.id, act->id);
     c->answer.done = true;
     c->answer_due = true;
+    if (!id_ok(act->id)) {
+        refuse(c, "an act has an id of 1 to %d printable ASCII characters", SM_ID_SIZE - 1);
+        return;
+    }
     if (repeated(c, act->id)) {
         refuse(c, "an act with this id came before: ignored");
         return;

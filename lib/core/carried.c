@@ -14,6 +14,8 @@ void sm_carried_interrupt(struct sm_carried *c)
 {
     c->last.place = SM_AT_UNKNOWN;
     c->run.open = false;
+    if (c->run.has && c->run.next < c->run.n_items)
+        c->run.left = true; /* it may have been in it, or be in it now: only a mark tells */
 }
 
 /* Ages stop growing long before they could overflow. */

@@ -54,10 +54,14 @@ struct sm_event *sm_core_push(struct sm_core *c, enum sm_event_kind kind)
 
 enum sm_status sm_core_use_method(struct sm_core *c, size_t i)
 {
-    const struct sm_method *m = &c->setup->method[i];
-    const int signal_at = sm_profile_channel(c->setup->profile, m->signal);
+    const struct sm_method *m;
+    int signal_at;
     enum sm_status s;
 
+    if (i >= c->setup->n_methods)
+        return SM_EINVAL;
+    m = &c->setup->method[i];
+    signal_at = sm_profile_channel(c->setup->profile, m->signal);
     if (signal_at < 0)
         return SM_EINVAL;
     if (c->signal != NULL) {
@@ -73,13 +77,28 @@ enum sm_status sm_core_use_method(struct sm_core *c, size_t i)
     return SM_OK;
 }
 
+static enum sm_status begin_method(struct sm_core *c, size_t i, char ret_why[SM_REASON_SIZE])
+{
+    const enum sm_status s = sm_core_use_method(c, i);
+
+    if (s != SM_OK)
+        sm_text_copy(ret_why, SM_REASON_SIZE, "the method is not possible with this meter");
+    return s;
+}
+
 /* Takes over the sheet in force and what carried says of its run. */
 static enum sm_status begin_sheet(struct sm_core *c, const struct sm_sheet *sheet,
                                   char ret_why[SM_REASON_SIZE])
 {
+    const char *sensor = c->setup->sensor;
+
+    if (sheet != NULL && sheet->sensor[0] != '\0')
+        sensor = sheet->sensor;
+    if (sensor[0] != '\0' && c->now->sensor[0] != '\0') /* the setup may name another one now */
+        sm_text_copy(c->now->sensor, sizeof c->now->sensor, sensor);
     if (sheet == NULL) {
         memset(&c->now->run, 0, sizeof c->now->run);
-        return sm_core_use_method(c, c->setup->own_method);
+        return begin_method(c, c->setup->own_method, ret_why);
     }
     if (!c->now->run.has || c->now->run.n_items != sheet->n || sheet->method < 0 ||
         (size_t)sheet->method >= c->setup->n_methods) {
@@ -89,7 +108,7 @@ static enum sm_status begin_sheet(struct sm_core *c, const struct sm_sheet *shee
     }
     *c->sheet = *sheet;
     c->has_sheet = true;
-    return sm_core_use_method(c, (size_t)sheet->method);
+    return begin_method(c, (size_t)sheet->method, ret_why);
 }
 
 static enum sm_status begin_signal(struct sm_core *c)
@@ -108,6 +127,22 @@ static enum sm_status begin_signal(struct sm_core *c)
     start.u95 = c->now->last.u95;
     return sm_signal_create(&c->method->rule, c->setup->profile->n_channels - 1, &c->now->channel,
                             &start, &c->signal);
+}
+
+/* When it began, before this file. */
+static int64_t born(int64_t age_ns)
+{
+    return -(age_ns < SM_T_MOST_NS ? age_ns : SM_T_MOST_NS);
+}
+
+/* The newest that an act's sender must have seen. */
+static int64_t newest_change(const struct sm_carried *now)
+{
+    int64_t n = now->last.has ? now->last.capture : 0;
+
+    for (size_t i = 0; i < now->n_questions; i++)
+        n = now->question[i].n > n ? now->question[i].n : n;
+    return n;
 }
 
 static enum sm_status begin(struct sm_core *c, const struct sm_carried *carried,
@@ -129,9 +164,10 @@ static enum sm_status begin(struct sm_core *c, const struct sm_carried *carried,
     }
     if (c->now->rest.has)
         sm_signal_rest(c->signal, true);
-    c->curve_born_t_ns = -c->now->curve.age_ns;
-    c->rest_born_t_ns = -c->now->rest.age_ns;
-    c->temperature_born_t_ns = -c->now->temperature.age_ns;
+    c->curve_born_t_ns = born(c->now->curve.age_ns);
+    c->rest_born_t_ns = born(c->now->rest.age_ns);
+    c->temperature_born_t_ns = born(c->now->temperature.age_ns);
+    c->change_n = newest_change(c->now);
     if (c->now->curve.has && c->now->curve.n != 0 && c->now->curve.accepted)
         sm_core_refit(c);
     sm_framer_init(&c->framer, &c->setup->profile->framing, true);
@@ -186,6 +222,8 @@ enum sm_status sm_core_feed(struct sm_core *c, const struct sm_input *in)
         return SM_EBUSY;
     if (in->n <= c->last_n || in->t_ns < c->in.t_ns)
         return SM_EORDER;
+    if (in->t_ns > SM_T_MOST_NS)
+        return SM_EINVAL;
     if (in->kind == SM_INPUT_BYTES) {
         if (sm_framer_feed(&c->framer, &in->chunk) != SM_OK)
             return SM_EINVAL;
@@ -244,6 +282,8 @@ static void on_roll(struct sm_core *c)
         sm_core_signal_end(c, "not captured: log changed");
         sm_core_lost_track(c);
     }
+    if (!c->now->last.has && sm_core_place(c).place == SM_PLACE_LEFT)
+        sm_core_unsure(c); /* `last` cannot say that the probe is on its way */
     c->dirty = true;
 }
 
@@ -397,7 +437,7 @@ bool sm_core_may_roll(const struct sm_core *c)
 
 void sm_core_carried(const struct sm_core *c, struct sm_carried *ret_carried)
 {
-    struct sm_signal_start place;
+    const struct sm_signal_start place = sm_core_place(c);
     struct sm_carried *o = ret_carried;
 
     *o = *c->now;
@@ -408,7 +448,6 @@ void sm_core_carried(const struct sm_core *c, struct sm_carried *ret_carried)
     if (o->temperature.has)
         o->temperature.age_ns = c->in.t_ns - c->temperature_born_t_ns;
     sm_signal_memory(c->signal, &o->channel);
-    sm_signal_place(c->signal, &place);
     if (o->last.has)
         o->last.place = place.place == SM_PLACE_STILL  ? SM_AT_STILL
                         : place.place == SM_PLACE_LEFT ? SM_AT_LEFT

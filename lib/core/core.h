@@ -46,7 +46,11 @@ SM_MUST_CHECK enum sm_status sm_core_start(const struct sm_core_setup *setup,
 void sm_core_destroy(struct sm_core *c);
 
 /* One input. The first of a file is normally a link. Events that are logged are numbered in->n + 1
- * and on. SM_EBUSY   not drained yet SM_EORDER  n or t_ns not after the last */
+ * and on. What is refused changes nothing:
+ *   SM_EBUSY   not drained yet
+ *   SM_EORDER  n not after the last, or t_ns before the last
+ *   SM_EINVAL  bytes that no port gives (too many, offsets of bad ones out of order), or a time
+ *              more than 70 years after the file was opened */
 SM_MUST_CHECK enum sm_status sm_core_feed(struct sm_core *c, const struct sm_input *in);
 
 /* The next event, lent until the next call; false: drained. */

@@ -22,11 +22,15 @@ enum sm_stage {
     SM_STAGE_END
 };
 
+#define SM_T_MOST_NS (INT64_MAX / 4) /* of any time or age here: sums and differences fit */
+
 /* The stay in one solution, as the bench sees it. */
 struct sm_immersion {
     bool begun; /* a `moved` came */
     bool given; /* to item run.next (until captured) */
     bool captured, not_settled;
+    bool marked; /* began by a mark */
+    bool early;  /* the probe was here when the sheet was handed over */
     int64_t moved_n, began_t_ns, settled_t_ns;
     struct sm_whereabouts where;
     char why_not_given[SM_REASON_SIZE];
@@ -59,8 +63,10 @@ struct sm_core {
     /* readings to captures */
     struct sm_signal *signal;
     struct sm_immersion immersion;
-    int64_t mark_of; /* n of the act behind a mark under way */
-    bool open_circuit;
+    int64_t mark_of;   /* n of the act behind a mark under way; 0: the meter's own key */
+    bool marked;       /* item run.next was marked in this turn of its */
+    bool open_circuit; /* told, and nothing since */
+    bool in_air;       /* the latest reading said so */
 
     /* captures to results */
     bool curve_good;
@@ -93,12 +99,30 @@ void sm_core_signal_event(struct sm_core *c, const struct sm_signal_event *e);
 void sm_core_signal_end(struct sm_core *c, const char *why);
 /* Nobody knows any more where the probe is. */
 void sm_core_lost_track(struct sm_core *c);
+/* The probe may be in item run.next, in the one after it or elsewhere: only a mark goes on. */
+void sm_core_unsure(struct sm_core *c);
+/* STILL, LEFT or NEW: where the signal has the probe. */
+struct sm_signal_start sm_core_place(const struct sm_core *c);
 void sm_core_where(const struct sm_core *c, size_t item, struct sm_whereabouts *ret_where);
 
 /* measured.c */
 void sm_core_captured(struct sm_core *c, const struct sm_settled *s);
-void sm_core_refit(struct sm_core *c);
 void sm_core_hold_provisional(struct sm_core *c, int64_t check_n, const char *why);
+/* The temperature that belongs to a capture; false: not known. */
+bool sm_core_temperature(const struct sm_core *c, const struct sm_settled *s, double *ret_c,
+                         const char **ret_how);
+
+/* calibrate.c */
+void sm_core_on_standard(struct sm_core *c, struct sm_event_capture *cap, int64_t n);
+void sm_core_refit(struct sm_core *c);
+/* Item i (from 0) of the sheet was skipped: the row of standards may be complete with that. */
+void sm_core_skipped(struct sm_core *c, size_t i);
+/* The standard of an item; NULL: none. Its lot has expired by now? */
+const struct sm_standard *sm_core_standard(const struct sm_core *c, const struct sm_item *i);
+bool sm_core_expired(const struct sm_core *c, const struct sm_standard *s);
+/* What an item's standard is worth now, at t_c (NaN: unknown). False: nothing, ret_why. */
+bool sm_core_value(const struct sm_core *c, const struct sm_item *item, double t_c,
+                   double *ret_value, char ret_why[SM_REASON_SIZE]);
 /* The curve that may give results now; NULL: none, ret_why says why. */
 const struct sm_curve *sm_core_curve(const struct sm_core *c, char ret_why[SM_REASON_SIZE]);
 

@@ -108,6 +108,15 @@ void sm_core_line(struct sm_core *c, const struct sm_line *line)
         sm_core_reading(c, &r);
 }
 
+static bool is_air(const struct sm_core *c, const struct sm_value *v)
+{
+    const struct sm_rule *r = &c->method->rule;
+
+    if (v->flag != SM_FLAG_OK)
+        return v->flag != SM_FLAG_UNUSABLE || c->in_air;
+    return r->has_plausible && (v->value < r->plausible_from || v->value > r->plausible_to);
+}
+
 void sm_core_reading(struct sm_core *c, const struct sm_reading *r)
 {
     struct sm_signal_input in;
@@ -133,6 +142,7 @@ void sm_core_reading(struct sm_core *c, const struct sm_reading *r)
     in.reading.value = v->value;
     in.reading.step = v->step;
     in.reading.flag = v->flag;
+    c->in_air = is_air(c, v);
     for (size_t i = 0; i < r->n; i++) {
         if ((int)i == c->signal_at)
             continue;
@@ -160,8 +170,8 @@ void sm_core_check_silence(struct sm_core *c)
     const int64_t since = c->last_reading_t_ns == SM_NEVER ? c->link_t_ns : c->last_reading_t_ns;
 
     if (!c->link_up || c->silent || c->setup->silence_ns <= 0 ||
-        c->in.t_ns - since < c->setup->silence_ns)
-        return;
+        c->in.t_ns - since < c->setup->silence_ns || c->stage == SM_STAGE_READING)
+        return; /* READING: one has just come with a mark, it waits */
     c->silent = true;
     sm_core_push(c, SM_EVENT_SILENT)->u.silent.last_line_t_ns = c->last_reading_t_ns;
     sm_core_signal_end(c, "the meter fell silent");

@@ -6,17 +6,14 @@
 #include <math.h>
 #include <string.h>
 
-#define K95 1.96 /* a capture's U95 over its standard uncertainty */
-
 /* Index among the signal's "other" channels of a channel of the profile. */
 static size_t other_of(const struct sm_core *c, int channel)
 {
     return (size_t)(channel < c->signal_at ? channel : channel - 1);
 }
 
-/* The temperature that belongs to a capture; false: not known. */
-static bool temperature_of(const struct sm_core *c, const struct sm_settled *s, double *ret_c,
-                           const char **ret_how)
+bool sm_core_temperature(const struct sm_core *c, const struct sm_settled *s, double *ret_c,
+                         const char **ret_how)
 {
     switch (c->method->temperature_from) {
     case SM_TEMPERATURE_CHANNEL:
@@ -37,145 +34,6 @@ static bool temperature_of(const struct sm_core *c, const struct sm_settled *s, 
         return true;
     }
     return false;
-}
-
-static void points_of(const struct sm_carried_curve *curve, struct sm_point *p)
-{
-    for (size_t i = 0; i < curve->n_points; i++) {
-        p[i].x = curve->point[i].x;
-        p[i].y = curve->point[i].y;
-        p[i].t_c = curve->point[i].t_c;
-    }
-}
-
-static double mean_u2_of(const struct sm_carried_curve *curve)
-{
-    double sum = 0;
-
-    for (size_t i = 0; i < curve->n_points; i++)
-        sum += (curve->point[i].u95_y / K95) * (curve->point[i].u95_y / K95);
-    return curve->n_points > 0 ? sum / (double)curve->n_points : 0;
-}
-
-void sm_core_refit(struct sm_core *c)
-{
-    struct sm_carried_curve *curve = &c->now->curve;
-    struct sm_point p[SM_POINTS_MAX];
-
-    points_of(curve, p);
-    c->curve_good =
-        sm_curve_fit(c->method->model, p, curve->n_points, c->method->ph_iso, &c->curve) == SM_OK;
-    c->mean_u2 = mean_u2_of(curve);
-}
-
-const struct sm_curve *sm_core_curve(const struct sm_core *c, char ret_why[SM_REASON_SIZE])
-{
-    const struct sm_carried_curve *curve = &c->now->curve;
-    const char *why = NULL;
-
-    if (!curve->has || curve->n == 0)
-        why = "there is no calibration curve: measure the standards first";
-    else if (!curve->accepted || !c->curve_good)
-        why = "the calibration curve was refused: calibrate again";
-    else if (curve->ended)
-        why = curve->why_ended;
-    else if (strcmp(curve->sensor, c->now->sensor) != 0)
-        why = "the calibration curve belongs to another sensor: calibrate this one";
-    else if (strcmp(curve->method, c->method->name) != 0)
-        why = "the calibration curve was made by another method: calibrate again";
-    else if (c->method->curve_valid_ns > 0 &&
-             c->in.t_ns - c->curve_born_t_ns > c->method->curve_valid_ns)
-        why = "the calibration curve is older than the method allows: calibrate again";
-    if (why == NULL)
-        return &c->curve;
-    sm_text_copy(ret_why, SM_REASON_SIZE, why);
-    return NULL;
-}
-
-static void fill_points(const struct sm_core *c, struct sm_event_curve *e)
-{
-    const struct sm_carried_curve *curve = &c->now->curve;
-    struct sm_point p[SM_POINTS_MAX];
-
-    points_of(curve, p);
-    e->n_points = curve->n_points;
-    for (size_t i = 0; i < curve->n_points; i++) {
-        e->point[i].capture = curve->point[i].capture;
-        e->point[i].item = curve->point[i].item;
-        sm_text_copy(e->point[i].name, sizeof e->point[i].name, curve->point[i].name);
-        e->point[i].x = p[i].x;
-        e->point[i].y = p[i].y;
-        e->point[i].t_c = p[i].t_c;
-        e->point[i].has_t = isfinite(p[i].t_c);
-        e->point[i].residual = e->point[i].back_calculated = (double)NAN;
-        if (e->fitted) {
-            e->point[i].residual = p[i].y - sm_curve_y(&e->curve, p[i].x, p[i].t_c);
-            e->point[i].back_calculated = sm_judge_read_back(&e->curve, &p[i]);
-        }
-    }
-}
-
-/* The row of standards is complete: fit and judge. */
-static void fit(struct sm_core *c)
-{
-    struct sm_carried_curve *curve = &c->now->curve;
-    struct sm_point p[SM_POINTS_MAX];
-    struct sm_judgement j;
-    struct sm_event *event = sm_core_push(c, SM_EVENT_CURVE);
-    struct sm_event_curve *e = &event->u.curve;
-
-    points_of(curve, p);
-    sm_judge_curve(c->method, p, curve->n_points, &j);
-    e->run = c->now->run.number;
-    e->accepted = j.accepted;
-    e->fitted = j.fitted;
-    e->curve = j.curve;
-    e->unit_x = c->method->measures;
-    e->unit_y = c->setup->profile->channel[c->signal_at].unit;
-    sm_text_copy(e->sensor, sizeof e->sensor, c->now->sensor);
-    sm_text_copy(e->method, sizeof e->method, c->method->name);
-    e->n_judged = j.n;
-    memcpy(e->judged, j.judged, j.n * sizeof j.judged[0]);
-    fill_points(c, e);
-    curve->n = event->n;
-    curve->accepted = j.accepted;
-    sm_text_copy(curve->sensor, sizeof curve->sensor, c->now->sensor);
-    sm_text_copy(curve->method, sizeof curve->method, c->method->name);
-    c->curve = j.curve;
-    c->curve_good = j.accepted;
-    c->mean_u2 = mean_u2_of(curve);
-    c->curve_born_t_ns = c->in.t_ns;
-}
-
-static void on_standard(struct sm_core *c, const struct sm_event_capture *cap, int64_t n)
-{
-    struct sm_carried_curve *curve = &c->now->curve;
-    const struct sm_item *item = &c->sheet->item[cap->where.item - 1];
-    struct sm_carried_point *p;
-    double x = 0, t_c = (double)NAN;
-    const char *how;
-    char why[SM_REASON_SIZE];
-    const bool has_t = temperature_of(c, &cap->s, &t_c, &how);
-
-    if (curve->has && curve->n != 0) { /* the first of a new row of standards */
-        memset(curve, 0, sizeof *curve);
-        c->curve_good = false;
-    }
-    curve->has = true;
-    if (item->standard >= 0 && curve->n_points < SM_POINTS_MAX &&
-        (has_t || c->method->model != SM_MODEL_NERNST) &&
-        sm_standard_value(c->setup->standards, (size_t)item->standard, t_c, &x, why) == SM_OK) {
-        p = &curve->point[curve->n_points++];
-        p->capture = n;
-        p->item = cap->where.item;
-        sm_text_copy(p->name, sizeof p->name, item->name);
-        p->x = x;
-        p->y = cap->value;
-        p->u95_y = cap->s.u95;
-        p->t_c = t_c;
-    }
-    if (sm_run_standards_done(&c->now->run, c->sheet))
-        fit(c);
 }
 
 /* Every provisional result of the run becomes what `kind` says. */
@@ -217,16 +75,16 @@ static bool read_check(struct sm_core *c, const struct sm_event_capture *cap,
                        struct sm_event_check *ret_e)
 {
     const struct sm_item *item = &c->sheet->item[cap->where.item - 1];
-    const struct sm_curve *curve = sm_core_curve(c, ret_e->why);
+    const struct sm_curve *curve;
     struct sm_read_off read;
     double t_c = (double)NAN;
     const char *how;
-    const bool has_t = temperature_of(c, &cap->s, &t_c, &how);
+    const bool has_t = sm_core_temperature(c, &cap->s, &t_c, &how);
 
-    if (curve == NULL)
+    if (!sm_core_value(c, item, t_c, &ret_e->want, ret_e->why))
         return false;
-    if (item->standard < 0 || sm_standard_value(c->setup->standards, (size_t)item->standard, t_c,
-                                                &ret_e->want, ret_e->why) != SM_OK)
+    curve = sm_core_curve(c, ret_e->why);
+    if (curve == NULL)
         return false;
     if ((!has_t && curve->model == SM_MODEL_NERNST) ||
         sm_curve_read(curve, cap->value, 1, t_c, &read) != SM_OK || !isfinite(read.x)) {
@@ -250,7 +108,8 @@ static void on_check(struct sm_core *c, const struct sm_event_capture *cap, int6
     e->curve = c->now->curve.n;
     e->where = cap->where;
     e->unit = c->method->measures;
-    e->within = c->method->check.value;
+    e->within = c->method->check.has ? c->method->check.value : (double)NAN; /* NaN: unknown */
+    e->want = (double)NAN;
     e->closing = sm_run_closing(c->sheet, cap->where.item - 1);
     e->computed = read_check(c, cap, e);
     if (e->computed)
@@ -260,8 +119,9 @@ static void on_check(struct sm_core *c, const struct sm_event_capture *cap, int6
     if (e->pass) {
         c->now->checks.since = 0;
         c->now->checks.last_good = check_n;
-        change_provisional(c, SM_EVENT_RELEASE, check_n,
-                           "the check that closes their bracket passed");
+        if (sm_run_checks_done(&c->now->run, c->sheet))
+            change_provisional(c, SM_EVENT_RELEASE, check_n,
+                               "the check that closes their bracket passed");
     } else {
         sm_core_hold_provisional(c, check_n,
                                  "the check after them failed: measure them again on a good curve");
@@ -303,7 +163,7 @@ static void on_sample(struct sm_core *c, const struct sm_event_capture *cap, int
     e->where = cap->where;
     sm_text_copy(e->name, sizeof e->name, cap->name);
     e->unit = c->method->measures;
-    e->has_temperature = temperature_of(c, &cap->s, &e->temperature_c, &how);
+    e->has_temperature = sm_core_temperature(c, &cap->s, &e->temperature_c, &how);
     sm_text_copy(e->temperature_how, sizeof e->temperature_how, how);
     e->state = SM_RESULT_HELD;
     if (curve != NULL) {
@@ -312,7 +172,7 @@ static void on_sample(struct sm_core *c, const struct sm_event_capture *cap, int
                        e->temperature_c, c->mean_u2, &made);
         e->has_value = made.has_value;
         e->value = made.value;
-        e->has_u95 = made.has_value;
+        e->has_u95 = made.has_value && isfinite(made.u95);
         e->u95 = made.u95;
         sm_text_copy(e->shown, sizeof e->shown, made.shown);
         sm_text_copy(e->why, sizeof e->why,
@@ -320,19 +180,24 @@ static void on_sample(struct sm_core *c, const struct sm_event_capture *cap, int
         if (!made.held)
             e->state = SM_RESULT_PROVISIONAL;
     }
-    c->now->checks.has = true;
-    c->now->checks.since++;
+    if (cap->where.kind != SM_ITEM_BLANK) {
+        c->now->checks.has = true;
+        c->now->checks.since++;
+    }
     carry_result(c, event->n, e);
 }
 
-/* With a sheet under way, a capture that could not be given to an item is asked about. */
-static void ask_which(struct sm_core *c, const struct sm_event_capture *cap, int64_t n)
+/* With a sheet under way, a capture that could not be given to an item is asked about; it may have
+ * been item run.next, so that a transit alone does not go on from it. */
+static void ask_which(struct sm_core *c, int64_t n)
 {
     struct sm_carried *now = c->now;
     struct sm_event *event;
 
-    if (!c->has_sheet || now->run.next >= now->run.n_items ||
-        now->n_questions == SM_QUESTIONS_MAX || c->immersion.why_not_given[0] == '\0')
+    if (!c->has_sheet || now->run.next >= now->run.n_items || c->immersion.why_not_given[0] == '\0')
+        return;
+    sm_core_unsure(c);
+    if (now->n_questions == SM_QUESTIONS_MAX)
         return;
     event = sm_core_push(c, SM_EVENT_QUESTION);
     event->u.question.capture = n;
@@ -342,7 +207,6 @@ static void ask_which(struct sm_core *c, const struct sm_event_capture *cap, int
     now->question[now->n_questions].capture = n;
     now->n_questions++;
     c->change_n = event->n;
-    (void)cap;
 }
 
 static void fill_others(const struct sm_core *c, struct sm_event_capture *e)
@@ -383,7 +247,11 @@ static void fill_capture(const struct sm_core *c, const struct sm_settled *s,
     e->tolerance = s->tolerance;
     fill_others(c, e);
     sm_text_copy(e->who, sizeof e->who, c->now->on_duty);
-    if (!e->where.has && c->immersion.why_not_given[0] != '\0')
+    if (c->immersion.early)
+        sm_text_copy(e->remark[e->n_remarks++], SM_REASON_SIZE,
+                     "no item: the probe was here when the sheet was handed over; press next if it "
+                     "is in the first item already");
+    else if (!e->where.has && c->immersion.why_not_given[0] != '\0')
         sm_text_copy(e->remark[e->n_remarks++], SM_REASON_SIZE, "beaker not confirmed");
 }
 
@@ -410,10 +278,11 @@ void sm_core_captured(struct sm_core *c, const struct sm_settled *s)
     if (im->given) {
         sm_run_captured(&c->now->run, n);
         im->given = false;
+        c->marked = false;
     }
     switch (e->where.kind) {
     case SM_ITEM_STANDARD:
-        on_standard(c, e, n);
+        sm_core_on_standard(c, e, n);
         break;
     case SM_ITEM_CHECK:
         on_check(c, e, n);
@@ -425,7 +294,7 @@ void sm_core_captured(struct sm_core *c, const struct sm_settled *s)
         on_sample(c, e, n);
         break;
     case SM_ITEM_NONE:
-        ask_which(c, e, n);
+        ask_which(c, n);
         break;
     }
 }

@@ -77,7 +77,8 @@ void sm_core_status(const struct sm_core *c, struct sm_core_status *ret_status)
         s->items = run->n_items;
         s->measured = sm_run_measured(run);
         s->sheet_done = run->next >= run->n_items;
-        sm_core_where(c, run->next + (c->immersion.given ? 1 : 0), &s->next);
+        sm_core_where(c, run->next + (c->immersion.given && !c->immersion.not_settled ? 1 : 0),
+                      &s->next);
     }
     s->latest.has = c->latest[c->signal_at].has;
     s->latest.value = c->latest[c->signal_at].value;

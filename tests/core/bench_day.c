@@ -33,6 +33,8 @@ static void day_profile(struct day *d)
     d->profile.channel[0].plausible_from = -1500;
     d->profile.channel[0].plausible_to = 1500;
     sm_text_copy(d->profile.open[0], SM_WORD_SIZE, "----");
+    d->profile.status_at = 3;
+    sm_text_copy(d->profile.mark[0], SM_WORD_SIZE, "KEY");
 }
 
 static void day_method(struct day *d)
@@ -42,6 +44,7 @@ static void day_method(struct day *d)
     sm_text_copy(m->name, sizeof m->name, "demonstration");
     m->measures = SM_UNIT_PH;
     sm_text_copy(m->signal, sizeof m->signal, "potential");
+    m->signal_unit = SM_UNIT_MV;
     sm_text_copy(m->temperature, sizeof m->temperature, "probe");
     m->model = SM_MODEL_NERNST;
     m->ph_iso = 7;
@@ -140,9 +143,13 @@ static void keep(struct day *d, const struct sm_event *e)
         k->has_where = e->u.capture.where.has;
         k->item = e->u.capture.where.item;
         k->value = e->u.capture.value;
+        if (e->u.capture.n_remarks > 0)
+            sm_text_copy(k->why, sizeof k->why, e->u.capture.remark[0]);
         break;
     case SM_EVENT_CURVE:
         k->good = e->u.curve.accepted;
+        if (e->u.curve.n_judged > 0)
+            sm_text_copy(k->why, sizeof k->why, e->u.curve.judged[0].text);
         break;
     case SM_EVENT_CHECK:
         k->good = e->u.check.pass;
@@ -160,6 +167,7 @@ static void keep(struct day *d, const struct sm_event *e)
     case SM_EVENT_HOLD:
     case SM_EVENT_RELEASE:
         k->value = (double)e->u.change.n;
+        sm_text_copy(k->why, sizeof k->why, e->u.change.why);
         break;
     case SM_EVENT_ANSWER:
         k->good = e->u.answer.done;
@@ -199,6 +207,8 @@ void day_feed(struct day *d, struct sm_input *in)
         if (e->t_ns != d->t_ns)
             fail_msg("event at %lld, its input at %lld", (long long)e->t_ns, (long long)d->t_ns);
         keep(d, e);
+        if (d->look != NULL)
+            d->look(d->look_arg, e);
     }
     assert_int_equal(sm_core_last_n(d->core), d->n);
 }
@@ -258,16 +268,12 @@ void day_stop(struct day *d)
     d->core = NULL;
 }
 
-void day_roll(struct day *d)
+/* Another core, another file, from d->begin. */
+static void begin_again(struct day *d, bool continues)
 {
-    struct sm_input in = { .kind = SM_INPUT_ROLL };
-    const struct sm_sheet *sheet;
+    const struct sm_sheet *sheet = sm_core_sheet(d->core);
     char why[SM_REASON_SIZE] = "";
 
-    day_feed(d, &in);
-    sm_core_carried(d->core, &d->begin);
-    assert_memory_equal(&d->begin, &d->carried, sizeof d->begin);
-    sheet = sm_core_sheet(d->core);
     if (sheet != NULL)
         d->sheet = *sheet;
     sm_core_destroy(d->core);
@@ -276,7 +282,39 @@ void day_roll(struct day *d)
     if (sm_core_start(&d->setup, &d->begin, sheet == NULL ? NULL : &d->sheet, &d->core, why) !=
         SM_OK)
         fail_msg("core does not start: %s", why);
-    link_up(d, true);
+    link_up(d, continues);
+}
+
+void day_roll(struct day *d)
+{
+    struct sm_input in = { .kind = SM_INPUT_ROLL };
+
+    day_feed(d, &in);
+    sm_core_carried(d->core, &d->begin);
+    assert_memory_equal(&d->begin, &d->carried, sizeof d->begin);
+    begin_again(d, true);
+}
+
+void day_restart(struct day *d, double s)
+{
+    if (d->has_carried)
+        d->begin = d->carried;
+    sm_carried_interrupt(&d->begin);
+    sm_carried_age(&d->begin, (int64_t)(s * 1e9));
+    d->utc_us += (int64_t)(s * 1e6);
+    begin_again(d, false);
+}
+
+void day_link(struct day *d, bool up)
+{
+    struct sm_input in = { .kind = SM_INPUT_LINK };
+
+    if (up) {
+        link_up(d, false);
+        return;
+    }
+    in.link.state = SM_LINK_LOST;
+    day_feed(d, &in);
 }
 
 static double noise(struct day *d)
@@ -294,7 +332,9 @@ static void reading(struct day *d)
 {
     char line[64];
 
-    snprintf(line, sizeof line, "%+08.2f %4.1f\r\n", d->mv + 0.05 * noise(d), d->t_c);
+    snprintf(line, sizeof line, "%+08.2f %4.1f%s\r\n", d->mv + 0.05 * noise(d), d->t_c,
+             d->key ? " KEY" : "");
+    d->key = false;
     day_bytes(d, line);
 }
 
@@ -318,6 +358,14 @@ void day_air(struct day *d, double s)
         day_ticks(d, d->t_ns + SM_NS_PER_S / 10);
         d->mv += 40 * noise(d);
         reading(d);
+    }
+}
+
+void day_open(struct day *d, double s)
+{
+    for (int i = 0; i < (int)(s * 10 + 0.5); i++) {
+        day_ticks(d, d->t_ns + SM_NS_PER_S / 10);
+        day_bytes(d, "---- 20.0\r\n");
     }
 }
 

@@ -39,7 +39,10 @@ struct day {
     struct day_kept event[DAY_KEPT];
     struct sm_carried carried; /* as stated last */
     bool has_carried;
-    char note[SM_REASON_SIZE];
+    bool key; /* the meter's own key is pressed: the next line says so */
+    /* told of each event as it comes, the live ones too; NULL: not */
+    void (*look)(void *arg, const struct sm_event *e);
+    void *look_arg;
 };
 
 /* A method like the shipped demonstration's: spread, dwell 3 s, over 2 s, 0.6 mV. */
@@ -53,6 +56,9 @@ void day_start(struct day *d, bool with_sheet);
 void day_stop(struct day *d);
 /* The file is changed: roll, a new core from what is carried, link up again. */
 void day_roll(struct day *d);
+/* The program is killed and begins again from what was stated last, s seconds later. */
+void day_restart(struct day *d, double s);
+void day_link(struct day *d, bool up);
 
 void day_feed(struct day *d, struct sm_input *in);
 void day_bytes(struct day *d, const char *text);
@@ -66,6 +72,8 @@ double day_mv(double ph);
 /* Air for 1 s, rinse for 1.4 s, then the solution for s seconds. */
 void day_move(struct day *d, double mv, double s);
 void day_air(struct day *d, double s);
+/* The same where the meter has a word for it. */
+void day_open(struct day *d, double s);
 /* Time passes without a reading. */
 void day_nothing(struct day *d, double s);
 /* An act with the newest durable entry seen. */
