@@ -29,6 +29,7 @@ struct any {
     uint64_t seed, state;
     bool plain;        /* nothing that a change of file could make another day of */
     bool rolls;        /* the file is changed now and then, where it may be */
+    unsigned files;    /* how often it was */
     int at;            /* the truth: index of the item whose beaker the probe is in; NOWHERE */
     int was;           /* … before that */
     int64_t since_us;  /* of the wall clock */
@@ -337,11 +338,11 @@ static void press(struct any *a, bool key)
 /* On to the beaker that the screen wants, as it wants it. */
 static void follow(struct any *a)
 {
-    go(a, turn(a), (enum way)below(a, WAY_COUNT));
+    go(a, turn(a), (enum way)below(a, a->plain ? WAY_STEP : WAY_COUNT));
     if (below(a, 2) == 0)
         stay(a, 0.2 + 2 * draw(a));
     if (below(a, 3) > 0)
-        press(a, below(a, 4) == 0);
+        press(a, !a->plain && below(a, 4) == 0);
     if (below(a, 8) == 0)
         press(a, false);
 }
@@ -441,6 +442,7 @@ static void roll(struct any *a, bool cut)
     if (!(cut ? sm_core_may_cut(a->d.core) : sm_core_may_roll(a->d.core)))
         return;
     day_roll(&a->d);
+    a->files++;
     a->moved_n = 0;
 }
 
@@ -513,8 +515,11 @@ static void play(struct any *a)
     day_act(&a->d, SM_ACT_SHEET, "");
     a->run = 1;
     stay(a, 2 + 8 * draw(a));
-    for (unsigned i = 0; i < STEPS && !done(a); i++)
+    for (unsigned i = 0; i < STEPS && !done(a); i++) {
         one_step(a);
+        if (a->rolls && (a->seed * 31 + i) % 5 == 0)
+            roll(a, false);
+    }
     day_stop(&a->d);
 }
 
@@ -540,11 +545,77 @@ static void no_beaker_gets_anothers_value_and_no_result_is_free_without_its_chec
     assert_true(given > 20 * SEEDS / 10 && released > SEEDS / 10 && held > SEEDS / 20);
 }
 
+/* What is compared of a day that was cut into files: not numbers and times. */
+static bool is_verdict(enum sm_event_kind k)
+{
+    return k == SM_EVENT_CAPTURE || k == SM_EVENT_CURVE || k == SM_EVENT_CHECK ||
+           k == SM_EVENT_RESULT || k == SM_EVENT_HOLD || k == SM_EVENT_RELEASE ||
+           k == SM_EVENT_QUESTION;
+}
+
+static const struct day_kept *next_verdict(const struct day *d, size_t *at)
+{
+    while (*at < d->kept && !is_verdict(d->event[*at].kind))
+        ++*at;
+    return *at < d->kept ? &d->event[(*at)++] : NULL;
+}
+
+/* The largest difference of two captures, in tolerances. */
+static double compare_days(const struct any *whole, const struct any *cut)
+{
+    double largest = 0;
+    size_t i = 0, k = 0;
+
+    for (;;) {
+        const struct day_kept *w = next_verdict(&whole->d, &i), *c = next_verdict(&cut->d, &k);
+
+        if (w == NULL && c == NULL)
+            return largest;
+        if (w == NULL || c == NULL || w->kind != c->kind || w->has_where != c->has_where ||
+            w->item != c->item || w->good != c->good || w->state != c->state)
+            BROKEN(whole, "whole: %s of item %zu, cut into %u files: %s of item %zu",
+                   w == NULL ? "nothing" : sm_event_kind_name(w->kind), w == NULL ? 0 : w->item,
+                   cut->files + 1, c == NULL ? "nothing" : sm_event_kind_name(c->kind),
+                   c == NULL ? 0 : c->item);
+        if (w->kind != SM_EVENT_CAPTURE)
+            continue;
+        if (!(fabs(w->value - c->value) <= 0.6)) /* the tolerance, in mV */
+            BROKEN(whole, "capture of item %zu: %.4f, cut into files %.4f", w->item, w->value,
+                   c->value);
+        largest = fmax(largest, fabs(w->value - c->value) / 0.6);
+    }
+}
+
+static void a_day_cut_into_files_gives_the_same_verdicts(void **state)
+{
+    static struct any whole;
+    unsigned captures = 0, files = 0;
+    double largest = 0;
+
+    (void)state;
+    for (uint64_t seed = only != 0 ? only : 1; seed <= (only != 0 ? only : SEEDS / 2); seed++) {
+        begin_day(&whole, seed);
+        whole.plain = true;
+        play(&whole);
+        begin_day(&any, seed);
+        any.plain = any.rolls = true;
+        play(&any);
+        largest = fmax(largest, compare_days(&whole, &any));
+        captures += whole.captures;
+        files += any.files;
+    }
+    print_message("    seeds 1 to %d: %u captures, %u changes of file, values differ by at most "
+                  "%.2f tolerances\n",
+                  SEEDS / 2, captures, files, largest);
+    assert_true(files > SEEDS);
+}
+
 /* A seed as argument: that day alone, told. */
 int main(int argc, char **argv)
 {
     const struct CMUnitTest tests[] = {
         cmocka_unit_test(no_beaker_gets_anothers_value_and_no_result_is_free_without_its_check),
+        cmocka_unit_test(a_day_cut_into_files_gives_the_same_verdicts),
     };
 
     only = argc > 1 ? strtoull(argv[1], NULL, 10) : 0;
