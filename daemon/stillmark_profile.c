@@ -20,13 +20,17 @@
 #define DONE 0
 #define ANSWER_NO 1
 #define NOT_DONE 2
+#define SHOWN 256 /* bytes of a line that are shown */
 
 static const char HELP[] =
     "stillmark profile FILE --try LINES\n"
     "\n"
     "Shows what a profile (YAML, as in conf/profiles/) reads out of a file of lines as a meter "
     "sends\n"
-    "them: each line's channels, or why it gives no reading.\n"
+    "them: each line's channels, or why it gives no reading. \"step\" is the last digit of the\n"
+    "display; \"over\", \"open\" and such are readings without a number. Catch LINES with any\n"
+    "terminal program: a minute of what the meter sends, the bytes as they come, over-range and a\n"
+    "probe in air among them.\n"
     "Exit status: 0 every line gave a reading; 1 at least one did not; 2 could not be done.\n";
 
 struct trial {
@@ -94,7 +98,8 @@ static void show_line(struct trial *tr, const struct sm_line *line)
     sm_text_init(&t, out, sizeof out);
     sm_text_addf(&t, "%llu: ", ++tr->lines);
     if (line->kind != SM_LINE_WHOLE) {
-        sm_text_addf(&t, "no reading: the line is %s", sm_line_kind_name(line->kind));
+        sm_text_addf(&t, "no reading: the line is %s%s", sm_line_kind_name(line->kind),
+                     line->kind == SM_LINE_OVERLONG ? ": is eol what ends its lines?" : "");
     } else if (sm_parser_read(tr->parser, 0, line->bytes, line->n, &r, &mark, why) == SM_OK) {
         tr->read++;
         add_reading(&t, tr->profile, &r);
@@ -104,7 +109,8 @@ static void show_line(struct trial *tr, const struct sm_line *line)
         sm_text_add_safe(&t, why, strlen(why));
     }
     sm_text_add(&t, "   | ");
-    sm_text_add_safe(&t, line->bytes, line->n);
+    sm_text_add_safe(&t, line->bytes, line->n < SHOWN ? line->n : SHOWN);
+    sm_text_add(&t, line->n > SHOWN ? " …" : "");
     printf("%s\n", out);
 }
 

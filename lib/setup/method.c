@@ -370,7 +370,7 @@ static void fill_rule(const struct sm_reader *r, const struct sm_node *root, str
         return;
     rule->kind = (enum sm_rule_kind)at;
     if (!sm_rule_built(rule->kind))
-        sm_blame(r, node != NULL ? node : root, "%srule %s is not possible yet",
+        sm_blame(r, node != NULL ? node : root, "%srule %s is not possible yet: say rule: spread",
                  node != NULL ? "" : "rule: left out, and the default ", names[at]);
     sm_get_time(r, rule_key(r, root, m, "over", "the span that is judged, 20 s say"), SM_NS_PER_S,
                 HOUR, &rule->over_ns);
