@@ -4,6 +4,8 @@
 
 #include <errno.h>
 #include <fcntl.h>
+#include <math.h>
+#include <poll.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
@@ -18,12 +20,13 @@
 #include "whole_file.h"
 
 #define SPEED_MAX 1000.0
+#define READER_MS 60000 /* so long without a reader is given up */
 
 /* A pseudo-terminal that passes bytes as they are; the other end is kept open so that it stays. */
 static int open_terminal(const char **ret_name, int *ret_other)
 {
     struct termios raw;
-    const int fd = posix_openpt(O_RDWR | O_NOCTTY | O_CLOEXEC);
+    const int fd = posix_openpt(O_RDWR | O_NOCTTY | O_CLOEXEC | O_NONBLOCK);
 
     if (fd < 0 || grantpt(fd) != 0 || unlockpt(fd) != 0)
         return -1;
@@ -37,28 +40,63 @@ static int open_terminal(const char **ret_name, int *ret_other)
     return tcsetattr(*ret_other, TCSANOW, &raw) == 0 ? fd : -1;
 }
 
-static void wait_ns(double ns)
+static int64_t clock_ns(void)
 {
     struct timespec t;
 
-    if (!(ns > 0))
-        return;
-    t.tv_sec = (time_t)(ns / 1e9);
-    t.tv_nsec = (long)(ns - 1e9 * (double)t.tv_sec);
-    while (nanosleep(&t, &t) != 0 && errno == EINTR)
+    clock_gettime(CLOCK_MONOTONIC, &t);
+    return (int64_t)t.tv_sec * SM_NS_PER_S + t.tv_nsec;
+}
+
+/* What the reader sends (questions to the meter) is taken and forgotten, or it would pile up until
+ * the reader's writes fail. */
+static void drain(int fd)
+{
+    char taken[512];
+
+    while (read(fd, taken, sizeof taken) > 0)
         continue;
 }
 
+/* Waits until the clock says t_ns: by the clock, so that errors do not add up. */
+static void wait_until(int fd, int64_t t_ns)
+{
+    for (;;) {
+        const int64_t left_ns = t_ns - clock_ns();
+        struct pollfd p = { .fd = fd, .events = POLLIN };
+
+        if (left_ns <= 0)
+            return;
+        if (left_ns < SM_NS_PER_MS) {
+            const struct timespec t = { .tv_nsec = (long)left_ns };
+
+            nanosleep(&t, NULL);
+        } else if (poll(&p, 1,
+                        left_ns / SM_NS_PER_MS < READER_MS ? (int)(left_ns / SM_NS_PER_MS)
+                                                           : READER_MS) > 0) {
+            drain(fd);
+        }
+    }
+}
+
+/* 0, or -1: nobody reads. */
 static int write_whole(int fd, const unsigned char *bytes, size_t n)
 {
     while (n > 0) {
+        struct pollfd p = { .fd = fd, .events = POLLOUT };
         const ssize_t w = write(fd, bytes, n);
 
-        if (w < 0 && errno != EINTR)
-            return -1;
+        drain(fd);
         if (w > 0) {
             bytes += w;
             n -= (size_t)w;
+        } else if (w < 0 && errno == EAGAIN) {
+            if (poll(&p, 1, READER_MS) == 0) {
+                errno = ETIMEDOUT;
+                return -1;
+            }
+        } else if (w < 0 && errno != EINTR) {
+            return -1;
         }
     }
     return 0;
@@ -68,7 +106,7 @@ static int play(int fd, const char *text, size_t n, double speed)
 {
     struct sm_entry_store store;
     struct sm_entry *e = calloc(1, sizeof *e);
-    int64_t before = -1;
+    int64_t first_t_ns = -1, begun_ns = 0;
     int result = e == NULL ? 2 : 0;
 
     sm_entry_store_init(&store);
@@ -79,11 +117,15 @@ static int play(int fd, const char *text, size_t n, double speed)
 
         if (sm_entry_read(text, line, &store, e, why) == SM_OK) {
             if (e->kind == SM_ENTRY_INPUT && e->input.kind == SM_INPUT_BYTES) {
-                if (before >= 0)
-                    wait_ns((double)(e->t_ns - before) / speed);
-                before = e->t_ns;
+                if (first_t_ns < 0) {
+                    first_t_ns = e->t_ns;
+                    begun_ns = clock_ns();
+                }
+                wait_until(fd,
+                           begun_ns + (int64_t)fmin((double)(e->t_ns - first_t_ns) / speed, 1e18));
                 if (write_whole(fd, e->input.chunk.bytes, e->input.chunk.n) != 0) {
-                    fprintf(stderr, "stillmark-replay: play: %s\n", strerror(errno));
+                    fprintf(stderr, "stillmark-replay: play: %s\n",
+                            errno == ETIMEDOUT ? "nobody has read for a minute" : strerror(errno));
                     result = 2;
                 }
             }
@@ -139,10 +181,13 @@ int sm_replay_play(int argc, char **argv)
     }
     printf("%s\n", name);
     fflush(stdout);
-    wait_ns(2e9); /* time for a reader to open it */
     sm_verify(f.text, f.n, NULL, &v);
+    if (!v.good)
+        fprintf(stderr, "stillmark-replay: play: %s does not verify: played up to entry %lld\n",
+                log, (long long)v.last_stamp_n);
+    wait_until(fd, clock_ns() + 2 * SM_NS_PER_S); /* time for a reader to open it */
     result = play(fd, f.text, v.stamped_bytes, speed);
-    wait_ns(5e8); /* time for the last bytes to be read */
+    wait_until(fd, clock_ns() + SM_NS_PER_S / 2); /* time for the last bytes to be read */
     close(other);
     close(fd);
     sm_whole_file_close(&f);

@@ -222,7 +222,7 @@ enum sm_status sm_core_feed(struct sm_core *c, const struct sm_input *in)
         return SM_EBUSY;
     if (in->n <= c->last_n || in->t_ns < c->in.t_ns)
         return SM_EORDER;
-    if (in->t_ns > SM_T_MOST_NS)
+    if (in->t_ns > SM_T_MOST_NS || in->n > SM_N_MOST)
         return SM_EINVAL;
     if (in->kind == SM_INPUT_BYTES) {
         if (sm_framer_feed(&c->framer, &in->chunk) != SM_OK)

@@ -14,6 +14,7 @@
 
 #define SM_CORE_NUMBER 1 /* raised whenever any event could differ */
 #define SM_PEOPLE_MAX 64
+#define SM_N_MOST (INT64_MAX / 4) /* no entry has a higher number */
 
 struct sm_person {
     char who[SM_NAME_SIZE];
@@ -49,8 +50,8 @@ void sm_core_destroy(struct sm_core *c);
  * and on. What is refused changes nothing:
  *   SM_EBUSY   not drained yet
  *   SM_EORDER  n not after the last, or t_ns before the last
- *   SM_EINVAL  bytes that no port gives (too many, offsets of bad ones out of order), or a time
- *              more than 70 years after the file was opened */
+ *   SM_EINVAL  bytes that no port gives (too many, offsets of bad ones out of order), a number
+ *              above SM_N_MOST, a time more than 70 years after the file was opened */
 SM_MUST_CHECK enum sm_status sm_core_feed(struct sm_core *c, const struct sm_input *in);
 
 /* The next event, lent until the next call; false: drained. */

@@ -93,38 +93,54 @@ static void write_carried(const struct sm_carried *c, char *out, size_t *ret_n)
     *ret_n = t.len;
 }
 
-/* Does this file begin with what the one before ended with? */
+/* Does the file begin from `want`? room: [SM_ENTRY_MAX] */
+static bool begins_from(struct run *r, const struct sm_carried *want, char *room,
+                        char ret_why[SM_REASON_SIZE])
+{
+    size_t n, n_made;
+
+    write_carried(want, room, &n);
+    write_carried(r->carried, r->made, &n_made);
+    return sm_replay_agree(r->told->how, room, n, r->made, n_made, ret_why);
+}
+
+/* Does this file begin with what the one before ended with? Where its `open` says that something is
+ * missing, the run or all may have been put aside: the setup had changed. */
 static enum sm_status check_before(struct run *r, const json_t *open)
 {
-    const char *how = string_of(open, "how");
+    const bool said = string_of(open, "missed")[0] != '\0';
     struct sm_carried *want;
-    char *a;
-    size_t n_a, n_b;
-    char why[SM_REASON_SIZE];
+    char why[SM_REASON_SIZE], unused[SM_REASON_SIZE];
+    char *room;
 
-    if (r->ask->before == NULL || r->told->ordinal != r->ask->before_ordinal + 1)
+    if (r->ask->before == NULL || r->ask->before_ordinal == INT64_MAX ||
+        r->told->ordinal != r->ask->before_ordinal + 1)
         return SM_OK;
     want = malloc(sizeof *want);
-    a = malloc(SM_ENTRY_MAX);
-    if (want == NULL || a == NULL) {
+    room = malloc(SM_ENTRY_MAX);
+    if (want == NULL || room == NULL) {
         free(want);
-        free(a);
+        free(room);
         return SM_ENOMEM;
     }
     *want = *r->ask->before;
-    if (strcmp(how, "rollover") != 0) {
+    if (strcmp(string_of(open, "how"), "rollover") != 0) {
         const json_int_t aged = json_integer_value(json_object_get(open, "aged"));
 
         sm_carried_interrupt(want);
         sm_carried_age(want, aged > 0 ? (int64_t)aged : 0);
     }
-    write_carried(want, a, &n_a);
-    write_carried(r->carried, r->made, &n_b);
     r->told->chained = true;
-    if (!sm_replay_agree(r->told->how, a, n_a, r->made, n_b, why))
-        differ(r, why, r->entry->n);
+    if (!begins_from(r, want, room, why)) {
+        memset(&want->run, 0, sizeof want->run);
+        if (!said || !begins_from(r, want, room, unused)) {
+            sm_carried_init(want);
+            if (!said || !begins_from(r, want, room, unused))
+                differ(r, why, r->entry->n);
+        }
+    }
     free(want);
-    free(a);
+    free(room);
     return SM_OK;
 }
 
@@ -290,24 +306,25 @@ static void compare(struct run *r, const struct sm_event *e)
 /* A sheet as it was handed over. What it was refused for then is what the log says. */
 static void read_sheet(struct run *r, struct sm_act *act)
 {
-    char why[SM_LINK_TEXT_SIZE] = "";
-
-    if (parse_sheet(r, act->sheet_file, act->sheet_text, act->sheet_text_n, why) == SM_OK)
+    if (act->sheet_why[0] == '\0' && parse_sheet(r, act->sheet_file, act->sheet_text,
+                                                 act->sheet_text_n, act->sheet_why) == SM_OK)
         act->sheet = r->sheet;
-    else if (act->sheet_why[0] == '\0')
-        sm_text_copy(act->sheet_why, sizeof act->sheet_why, why);
 }
 
 /* Where more events came out than then, their numbers are taken: from here on all are later. What
  * an act had seen is moved along. */
 static void renumber(struct run *r, struct sm_input *in)
 {
-    const int64_t past = sm_core_last_n(r->core) + 1 - (in->n + r->later);
+    int64_t past;
 
+    if (in->n > SM_N_MOST) /* the core refuses it */
+        return;
+    past = sm_core_last_n(r->core) + 1 - (in->n + r->later);
     if (past > 0)
         r->later += past;
     in->n += r->later;
-    in->act.seen += r->later;
+    if (in->kind == SM_INPUT_ACT && in->act.seen <= SM_N_MOST)
+        in->act.seen += r->later;
 }
 
 static enum sm_status on_input(struct run *r)

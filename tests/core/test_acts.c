@@ -138,6 +138,10 @@ static void what_is_refused_changes_nothing(void **state)
     bytes.n++;
     bytes.t_ns = INT64_MAX;
     assert_int_equal(sm_core_feed(day.core, &bytes), SM_EINVAL);
+    bytes.t_ns = day.t_ns;
+    bytes.n = INT64_MAX;
+    assert_int_equal(sm_core_feed(day.core, &bytes), SM_EINVAL);
+    bytes.n = sm_core_last_n(day.core) + 1;
     assert_false(sm_core_next(day.core, &e));
     assert_int_equal(sm_core_last_n(day.core), bytes.n - 1);
     day_in(&day, 100, 6);
