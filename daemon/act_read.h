@@ -11,7 +11,8 @@
 
 /* {"k":"act","act":"next","id":"7f2c-19","seen":61879,"who":"bench-a", …}: keys as in the log's
  * `act` entry, and "meter". door and peer are the daemon's to say, not the sender's. Texts are
- * lent: o must outlive the act. SM_ESYNTAX  ret_why: which key, what was expected */
+ * lent: o must outlive the act.
+ *   SM_ESYNTAX  ret_why: which key, what was expected */
 SM_MUST_CHECK enum sm_status sm_act_read(const json_t *o, struct sm_act *ret_act,
                                          char ret_why[SM_ACT_WHY_SIZE]);
 #endif

@@ -34,8 +34,9 @@ struct sm_hub_about {
 };
 
 /* A Unix socket (0660); who connects waits until sm_hub_open. What a daemon that died left behind
- * is taken away; one that lives is not disturbed. SM_EBUSY  another daemon listens there SM_EIO,
- * SM_ENOMEM: ret_why */
+ * is taken away; one that lives is not disturbed.
+ *   SM_EBUSY           another daemon listens there
+ *   SM_EIO, SM_ENOMEM  ret_why */
 SM_MUST_CHECK enum sm_status sm_hub_create(const struct sm_hub_about *about, const char *path,
                                            struct sm_hub **ret_hub, char ret_why[SM_WHY_SIZE]);
 SM_MUST_CHECK enum sm_status sm_hub_open(struct sm_hub *h); /* SM_ENOMEM */

@@ -36,9 +36,10 @@ SM_MUST_CHECK enum sm_status sm_csv_begin(struct sm_csv *c, const char *text, si
                                           char ret_why[SM_REASON_SIZE]);
 
 /* The next row. CRLF, quotes (RFC 4180) and blank last lines are fine. After a row with wrong
- * values the next can be asked for; after one whose quotes are wrong the text has ended. SM_ESHORT
- * no more rows SM_ESYNTAX  a wrong number of fields, or no number: nan, inf, empty, too large, a
- * decimal mark other than that of the rows before, a negative ux or uy; or text that is no CSV */
+ * values the next can be asked for; after one whose quotes are wrong the text has ended.
+ *   SM_ESHORT   no more rows
+ *   SM_ESYNTAX  a wrong number of fields, or no number: nan, inf, empty, too large, a decimal mark
+ *               other than that of the rows before, a negative ux or uy; or text that is no CSV */
 SM_MUST_CHECK enum sm_status sm_csv_next(struct sm_csv *c, struct sm_csv_row *ret_row,
                                          char ret_why[SM_REASON_SIZE]);
 

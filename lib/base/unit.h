@@ -40,8 +40,9 @@ struct sm_quantity {
 /* "mV", "pH", "°C", "µS/cm", …; "" for SM_UNIT_NONE. Never NULL. */
 const char *sm_unit_name(enum sm_unit u);
 
-/* Case matters. Also understood: "uS/cm", "ug/L" for the µ (either code point of µ), "C" is NOT °C,
- * "" is SM_UNIT_NONE. SM_EUNKNOWN  no such unit */
+/* Case matters. Also understood: "uS/cm", "ug/L" for the µ (either code point of µ), "C" is NOT
+ * °C, "" is SM_UNIT_NONE.
+ *   SM_EUNKNOWN  no such unit */
 SM_MUST_CHECK enum sm_status sm_unit_parse(const char *s, size_t n, enum sm_unit *ret_unit);
 
 /* "0.6 mV", "98 %", "15 s", "7": number, blanks, unit. A number alone has SM_UNIT_NONE.
@@ -56,7 +57,8 @@ SM_MUST_CHECK enum sm_status sm_quantity_parse(const char *s, size_t n, struct s
 SM_MUST_CHECK enum sm_status sm_quantity_ns(struct sm_quantity q, int64_t *ret_ns);
 
 /* Between like units (V to mV, mS/cm to µS/cm, µg/L to mg/L, min to s): by a whole factor, rounded
- * once. SM_EINVAL  they do not measure the same thing */
+ * once.
+ *   SM_EINVAL  they do not measure the same thing */
 SM_MUST_CHECK enum sm_status sm_quantity_in(struct sm_quantity q, enum sm_unit want,
                                             double *ret_value);
 #endif

@@ -71,10 +71,13 @@ struct sm_point {
 /* Least squares by QR or SVD on centred data (GSL). NERNST: E = Eiso - s kN(t) (pH - pHiso), each
  * point at its own temperature; `coefficient` is then the line at the mean temperature: intercept
  * (mV at pH 0) and slope (mV/pH). Allocates for the time of the call (a curve is fitted once per
- * set of standards). SM_ESHORT  fewer points, or fewer distinct x, than coefficients + 1 (equal
- * numbers fit without statistics are refused too) SM_EVALUE  a point that is not finite, or numbers
- * too far apart for a double SM_EINVAL  a model that is not built SM_EFULL   more than
- * SM_FIT_POINTS_MAX SM_ENOMEM  no memory */
+ * set of standards).
+ *   SM_ESHORT  fewer points, or fewer distinct x, than coefficients + 1 (equal numbers fit without
+ *              statistics are refused too)
+ *   SM_EVALUE  a point that is not finite, or numbers too far apart for a double
+ *   SM_EINVAL  a model that is not built
+ *   SM_EFULL   more than SM_FIT_POINTS_MAX
+ *   SM_ENOMEM  no memory */
 SM_MUST_CHECK enum sm_status sm_curve_fit(enum sm_model m, const struct sm_point *p, size_t n,
                                           double ph_iso, struct sm_curve *ret_curve);
 
@@ -90,8 +93,8 @@ struct sm_read_off {
 
 /* x for a mean y of m replicates (NERNST: at t_c).
  *   SM_EVALUE  no x, or no single one within reach, gives this y. QUADRATIC: within reach is what
- * lies between the standards, else what lies on their side of the turning point SM_EINVAL  m is 0
- */
+ *              lies between the standards, else what lies on their side of the turning point
+ *   SM_EINVAL  m is 0 */
 SM_MUST_CHECK enum sm_status sm_curve_read(const struct sm_curve *c, double y, unsigned m,
                                            double t_c, struct sm_read_off *ret_read);
 

@@ -8,17 +8,18 @@ struct sm_parser; /* holds the profile's compiled pattern */
 
 /* Compiles a profile (which must outlive the parser).
  *   SM_EINVAL  the pattern does not compile, lacks a channel's group or is too large; a field
- * number or scale outside its range: ret_why says it SM_ENOMEM */
+ *              number or scale outside its range: ret_why says it
+ *   SM_ENOMEM */
 SM_MUST_CHECK enum sm_status sm_parser_create(const struct sm_profile *p,
                                               struct sm_parser **ret_parser,
                                               char ret_why[SM_REASON_SIZE]);
 void sm_parser_destroy(struct sm_parser *p); /* NULL is fine */
 
-/* Reads a line. Allocates nothing. ret_mark: the line carries the profile's `mark` word.
- * A channel that the line leaves out is not `present`; at least one must be. A word in place of a
- * number or as the status sets the flag; a number outside `plausible` is OPEN whatever the status
- * says. SM_ESYNTAX  no reading in it: ret_why says in a few words what was expected where
- * ("checksum is 3F, the line says 3E"; "field 1: expected a number, got \"abc\""); ret_reading
+/* Reads a line. Allocates nothing. ret_mark: the line carries the profile's `mark` word. A channel
+ * that the line leaves out is not `present`; at least one must be. A word in place of a number or
+ * as the status sets the flag; a number outside `plausible` is OPEN whatever the status says.
+ *   SM_ESYNTAX  no reading in it: ret_why says in a few words what was expected where ("checksum
+ *               is 3F, the line says 3E"; "field 1: expected a number, got \"abc\""); ret_reading
  *               untouched */
 SM_MUST_CHECK enum sm_status sm_parser_read(struct sm_parser *p, int64_t t_ns, const char *line,
                                             size_t n, struct sm_reading *ret_reading,

@@ -45,8 +45,8 @@ void sm_entry_stamp(struct sm_text *t, int64_t n, int64_t t_ns, int64_t utc_us, 
 /* Carried alone, as a JSON object without newline (inside `open` and the `carried` entry). */
 void sm_carried_write(struct sm_text *t, const struct sm_carried *c);
 /* o: the object alone, or a whole `carried` entry. What is left out is empty (an unknown real:
- * NaN). Unknown sections and keys are passed over and counted. SM_ESYNTAX  ret_why; ret_carried is
- * then of no use */
+ * NaN). Unknown sections and keys are passed over and counted.
+ *   SM_ESYNTAX  ret_why; ret_carried is then of no use */
 SM_MUST_CHECK enum sm_status sm_carried_read(const json_t *o, struct sm_carried *ret_carried,
                                              unsigned *ret_passed_over,
                                              char ret_why[SM_REASON_SIZE]);
@@ -87,8 +87,8 @@ struct sm_entry {
 };
 
 /* One line (without newline). An input's lent parts lie in *store. Reads untrusted text: strict
- * JSON (duplicate keys refused, depth and sizes limited). SM_ESYNTAX  not an entry: ret_why;
- * nothing to free */
+ * JSON (duplicate keys refused, depth and sizes limited).
+ *   SM_ESYNTAX  not an entry: ret_why; nothing to free */
 SM_MUST_CHECK enum sm_status sm_entry_read(const char *line, size_t n, struct sm_entry_store *store,
                                            struct sm_entry *ret_entry,
                                            char ret_why[SM_REASON_SIZE]);

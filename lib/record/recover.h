@@ -18,9 +18,11 @@ struct sm_recovered {
 };
 
 /* Works on a whole file's text. A stamped part that does not verify is refused: the file is
- * damaged, not torn. SM_EVALUE  damaged before its last stamp: ret->verify says where; still fills
- * what verified before SM_ESHORT  no stamped `open` in it: nothing to begin from (next_n is still
- * set) SM_ENOMEM */
+ * damaged, not torn.
+ *   SM_EVALUE  damaged before its last stamp: ret->verify says where; still fills what verified
+ *              before
+ *   SM_ESHORT  no stamped `open` in it: nothing to begin from (next_n is still set)
+ *   SM_ENOMEM */
 SM_MUST_CHECK enum sm_status sm_recover(const char *text, size_t n, struct sm_recovered *ret);
 void sm_recovered_finish(struct sm_recovered *r);
 #endif

@@ -46,7 +46,8 @@ struct sm_verify {
 void sm_verify(const char *text, size_t n, const char *key_hex, struct sm_verify *ret_verify);
 
 /* Across two files of one meter that follow one another: missing ordinals, previous stamp. An
- * ordinal of 0 is not known (its `open` was torn). SM_EVALUE  ret_why */
+ * ordinal of 0 is not known (its `open` was torn).
+ *   SM_EVALUE  ret_why */
 SM_MUST_CHECK enum sm_status sm_verify_chain(const struct sm_verify *before,
                                              const struct sm_verify *after,
                                              char ret_why[SM_REASON_SIZE]);

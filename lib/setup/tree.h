@@ -33,7 +33,9 @@ struct sm_tree; /* owns its nodes */
 
 /* Reads text[n]. `file` is for the blames alone.
  *   SM_OK       also where a key said twice, an anchor, alias or tag was blamed: what else is wrong
- * with the file can still be found SM_ESYNTAX  no tree: blames say what and where SM_ENOMEM */
+ *               with the file can still be found
+ *   SM_ESYNTAX  no tree: blames say what and where
+ *   SM_ENOMEM */
 SM_MUST_CHECK enum sm_status sm_tree_parse(const char *file, const char *text, size_t n,
                                            struct sm_tree **ret_tree, struct sm_blames *blames);
 void sm_tree_destroy(struct sm_tree *t); /* NULL is fine */

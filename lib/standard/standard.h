@@ -53,15 +53,16 @@ int sm_standards_find(const struct sm_standards *s, const char *name);
 
 /* Value of standard i at t_c (°C), linear between the neighbours in temperature. The first and the
  * last certificate value, and so a single one, hold SM_CERTIFICATE_WITHIN_C further; a table ends
- * at its ends. A standard that has certificate values never falls back on the table. SM_EINVAL  no
- * value for this temperature: ret_why says what there is */
+ * at its ends. A standard that has certificate values never falls back on the table.
+ *   SM_EINVAL  no value for this temperature: ret_why says what there is */
 SM_MUST_CHECK enum sm_status sm_standard_value(const struct sm_standards *s, size_t i, double t_c,
                                                double *ret_value, char ret_why[SM_REASON_SIZE]);
 
 /* Reads a table: CSV, `#` lines at the head of which one is "# source: …" and one "# unit: pH",
- * then "t_C,NAME,…", then rows; an empty cell is no value. Pure. SM_ESYNTAX  ret_line, ret_why (the
- * first fault); no source or no unit named is one SM_EFULL    more rows or columns than fit:
- * ret_line, ret_why `name` is left empty: the file's name is the caller's. */
+ * then "t_C,NAME,…", then rows; an empty cell is no value. Pure.
+ *   SM_ESYNTAX  ret_line, ret_why (the first fault); no source or no unit named is one
+ *   SM_EFULL    more rows or columns than fit: ret_line, ret_why
+ * `name` is left empty: the file's name is the caller's. */
 SM_MUST_CHECK enum sm_status sm_table_parse(const char *text, size_t n, struct sm_table *ret_table,
                                             unsigned *ret_line, char ret_why[SM_REASON_SIZE]);
 #endif
