@@ -190,6 +190,10 @@ static void link_up(struct sm_core *c, const struct sm_link *link)
     sm_asker_link(&c->asker, c->in.t_ns, true);
     if (link->settings[0] != '\0')
         sm_text_copy(c->now->meter.settings, sizeof c->now->meter.settings, link->settings);
+    if (link->identity[0] != '\0' && strcmp(link->identity, c->now->meter.adapter) != 0) {
+        sm_text_copy(c->now->meter.adapter, sizeof c->now->meter.adapter, link->identity);
+        c->dirty = true; /* after a restart, too, another one is noticed */
+    }
 }
 
 void sm_core_link(struct sm_core *c, const struct sm_link *link)

@@ -98,11 +98,11 @@ static void begin(struct rig *r)
     assert_true(r->watched >= 0);
 }
 
-static void finish(struct rig *r)
+static void finish(struct rig *r, size_t files)
 {
     rig_stop(r);
     rig_nothing_announced_is_lost(r, "adapters");
-    assert_int_equal(rig_verify(r), 1);
+    assert_int_equal(rig_verify(r), files);
     rig_remove(r);
 }
 
@@ -152,7 +152,7 @@ static void the_same_adapter_is_taken_under_another_name_within_5_s(void **state
                      2); /* up, and lost */
     assert_int_equal(rig_count(r.told, "\"device\":\"" USB1 "\",\"identity\":\"" ADAPTER_A "\""),
                      1);
-    finish(&r);
+    finish(&r, 1);
 }
 
 static void another_adapter_is_refused_for_ever_and_said_once(void **state)
@@ -181,7 +181,26 @@ static void another_adapter_is_refused_for_ever_and_said_once(void **state)
     rig_pass(&r, 5 * SM_NS_PER_S);
     assert_true(r.watched >= 0);
     check_links(&r, want, COUNT(want));
-    finish(&r);
+    finish(&r, 1);
+}
+
+static void another_adapter_is_refused_after_a_restart_too(void **state)
+{
+    struct rig r;
+
+    (void)state;
+    begin(&r);
+    rig_pass(&r, 2 * SM_NS_PER_S);
+    rig_stop(&r);
+    plug(&r, USB0, ADAPTER_B);
+    rig_start(&r);
+    rig_pass(&r, 5 * SM_NS_PER_S);
+    assert_int_equal(r.watched, -1);
+    assert_non_null(strstr(r.told, "is another adapter now (" ADAPTER_B ", before " ADAPTER_A));
+    plug(&r, USB0, ADAPTER_A);
+    rig_pass(&r, 5 * SM_NS_PER_S);
+    assert_true(r.watched >= 0);
+    finish(&r, 2);
 }
 
 static void another_adapter_is_taken_where_the_setup_allows_it(void **state)
@@ -201,7 +220,7 @@ static void another_adapter_is_taken_where_the_setup_allows_it(void **state)
     assert_true(r.watched >= 0);
     check_links(&r, want, COUNT(want));
     assert_int_equal(rig_count(r.told, "\"identity\":\"" ADAPTER_B "\""), 1);
-    finish(&r);
+    finish(&r, 1);
 }
 
 int main(void)
@@ -209,6 +228,7 @@ int main(void)
     const struct CMUnitTest tests[] = {
         cmocka_unit_test(the_same_adapter_is_taken_under_another_name_within_5_s),
         cmocka_unit_test(another_adapter_is_refused_for_ever_and_said_once),
+        cmocka_unit_test(another_adapter_is_refused_after_a_restart_too),
         cmocka_unit_test(another_adapter_is_taken_where_the_setup_allows_it),
     };
 
