@@ -33,21 +33,22 @@ suite() {
     what=$1 dir=$2 choice=$3
     shift 3
     echo "== $what =="
-    if ! { cmake -S . -B "$dir" "$@" && cmake --build "$dir" -j "$(nproc)"; } >"$dir.log" 2>&1; then
-        grep -E 'error|Error|undefined' "$dir.log" | head -n 20
+    mkdir -p "$dir"
+    if ! { cmake -S . -B "$dir" "$@" && cmake --build "$dir" -j "$(nproc)"; } >"$dir/suite.log" 2>&1; then
+        grep -E 'error|Error|undefined' "$dir/suite.log" | head -n 20
         count "$what" 0 1
         return
     fi
     # shellcheck disable=SC2086
-    (cd "$dir" && ctest -j "$(nproc)" --output-on-failure $choice) >"$dir.tests.log" 2>&1
-    all=$(sed -n 's/.* tests failed out of \([0-9]*\).*/\1/p' "$dir.tests.log")
-    bad=$(sed -n 's/.* \([0-9]*\) tests failed out of .*/\1/p' "$dir.tests.log")
+    (cd "$dir" && ctest -j "$(nproc)" --output-on-failure $choice) >"$dir/suite-tests.log" 2>&1
+    all=$(sed -n 's/.* tests failed out of \([0-9]*\).*/\1/p' "$dir/suite-tests.log")
+    bad=$(sed -n 's/.* \([0-9]*\) tests failed out of .*/\1/p' "$dir/suite-tests.log")
     if [ -z "$all" ]; then
-        tail -n 20 "$dir.tests.log"
+        tail -n 20 "$dir/suite-tests.log"
         count "$what" 0 1
         return
     fi
-    [ "$bad" = 0 ] || grep -vE '^ *[0-9]+/[0-9]+ .*Passed|^ *Start ' "$dir.tests.log" | head -n 150
+    [ "$bad" = 0 ] || grep -vE '^ *[0-9]+/[0-9]+ .*Passed|^ *Start ' "$dir/suite-tests.log" | head -n 150
     count "$what" $((all - bad)) "$bad"
 }
 
