@@ -53,10 +53,11 @@ static uint64_t only; /* 0: all */
 
 static void tell(const struct any *a, const char *what, int64_t item)
 {
+    const int64_t since_us = a->d.utc_us + a->d.t_ns / 1000 - INT64_C(1796112000000000);
+
     if (only != 0)
-        print_message("%8.1f s in %2d: %s %lld\n",
-                      1e-6 * (double)(a->d.utc_us + a->d.t_ns / 1000 - INT64_C(1796112000000000)),
-                      a->at + 1, what, (long long)item);
+        print_message("%8.1f s in %2d: %s %lld\n", 1e-6 * (double)since_us, a->at + 1, what,
+                      (long long)item);
 }
 
 static double draw(struct any *a)
