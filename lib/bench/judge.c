@@ -144,13 +144,13 @@ void sm_judge_curve(const struct sm_method *m, const struct sm_point *p, size_t 
 bool sm_judge_check(const struct sm_method *m, double want, double found,
                     char ret_why[SM_REASON_SIZE])
 {
-    const double off = found - want;
+    const double off = found - want, shown = fabs(off) < 0.0005 ? 0 : off; /* no "-0.000" */
     const bool pass = m->check.has && fabs(off) <= m->check.value;
     const char *unit = sm_unit_name(m->measures);
     struct sm_text t;
 
     sm_text_init(&t, ret_why, SM_REASON_SIZE);
-    sm_text_addf(&t, "reads %.3f %s, should read %.3f: %+.3f %s, ", found, unit, want, off, unit);
+    sm_text_addf(&t, "reads %.3f %s, should read %.3f: %+.3f %s, ", found, unit, want, shown, unit);
     if (m->check.has)
         sm_text_addf(&t, "%.3g is allowed", m->check.value);
     else

@@ -34,9 +34,9 @@ static const char *caution(const struct sm_core *c)
 {
     enum sm_caution_when when = SM_CAUTION_LOADING;
 
-    if (!c->has_sheet)
+    if (!c->has_sheet || c->now->run.next >= c->sheet->n)
         return NULL;
-    if (c->now->run.next < c->sheet->n && c->now->run.next > 0) {
+    if (c->now->run.next > 0) {
         const enum sm_class class = sm_item_class(c->sheet->item[c->now->run.next].kind);
 
         when = class == SM_CLASS_STANDARD ? SM_CAUTION_STANDARD

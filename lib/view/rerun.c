@@ -21,6 +21,7 @@ struct run {
     struct sm_logged logged;
     struct sm_setup *setup;
     struct sm_sheet *sheet;           /* as parsed last */
+    bool has_other_method;            /* the method to be replaced is in the log */
     bool has_sheet;                   /* a sheet was in force at the file's head */
     const struct sm_core_setup *mine; /* the meter's */
     struct sm_core *core;
@@ -72,7 +73,8 @@ static enum sm_status fail(struct run *r, const char *why)
     struct sm_text t;
 
     sm_text_init(&t, r->told->why, sizeof r->told->why);
-    sm_text_addf(&t, "line %lld: ", (long long)r->line);
+    if (r->line > 0)
+        sm_text_addf(&t, "line %lld: ", (long long)r->line);
     sm_text_add_safe(&t, why, strlen(why));
     return SM_ESYNTAX;
 }
@@ -188,6 +190,7 @@ static enum sm_status on_file(struct run *r)
                    ? SM_OK
                    : fail(r, "too many setup files");
     }
+    r->has_other_method = r->has_other_method || replaced(r, name);
     s = replaced(r, name)
             ? sm_logged_add(&r->logged, name, r->ask->method_text, r->ask->method_n)
             : sm_logged_add(&r->logged, name, json_string_value(text), json_string_length(text));
@@ -227,6 +230,8 @@ static enum sm_status start(struct run *r)
 
     if (r->logged.n == 0)
         return fail(r, "the log carries no setup");
+    if (r->ask->method_name != NULL && !r->has_other_method)
+        return fail(r, "the log carries no method file of that name: what would it replace?");
     sm_blames_init(&b, r->blame, BLAMES);
     sm_logged_source(&r->logged, &source);
     if (sm_setup_load(&source, r->logged.file[0].name, &r->setup, &b) != SM_OK)
