@@ -218,6 +218,23 @@ static void other_rules_are_run_to_the_end_and_give_other_events(void **state)
     free(method);
 }
 
+static void rules_that_replace_nothing_are_refused(void **state)
+{
+    struct sm_rerun_ask ask = { .text = log_text,
+                                .n = log_n,
+                                .tell = tell,
+                                .most_told = 20,
+                                .method_name = "other.yaml",
+                                .method_text = "measures: pH\n",
+                                .method_n = 13 };
+    struct sm_rerun_told t;
+
+    (void)state;
+    assert_int_equal(sm_rerun(&ask, &t), SM_ESYNTAX);
+    assert_non_null(strstr(t.why, "no method file of that name"));
+    free(t.last);
+}
+
 /* The log's first file may be anything that was stamped: at every stamp it can be cut. */
 static void cut_at_any_stamp_it_runs_again_without_a_difference(void **state)
 {
@@ -275,6 +292,7 @@ int main(void)
         cmocka_unit_test(an_event_left_out_of_the_log_is_told_and_the_rest_compared),
         cmocka_unit_test(an_event_that_never_was_is_told_and_the_rest_compared),
         cmocka_unit_test(other_rules_are_run_to_the_end_and_give_other_events),
+        cmocka_unit_test(rules_that_replace_nothing_are_refused),
         cmocka_unit_test(cut_at_any_stamp_it_runs_again_without_a_difference),
         cmocka_unit_test(a_sheet_refused_for_several_things_is_refused_alike),
     };
