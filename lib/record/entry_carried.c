@@ -220,8 +220,7 @@ static void write_channel(struct sm_text *t, const struct sm_channel_memory *m)
 static void write_meter(struct sm_text *t, const struct sm_carried *c)
 {
     sm_json_words(t, "sensor", c->sensor);
-    if (c->meter.identity[0] == '\0' && c->meter.settings[0] == '\0' &&
-        c->meter.adapter[0] == '\0')
+    if (c->meter.identity[0] == '\0' && c->meter.settings[0] == '\0' && c->meter.adapter[0] == '\0')
         return;
     sm_json_object(t, "meter");
     sm_json_words(t, "identity", c->meter.identity);

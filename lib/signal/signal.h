@@ -11,8 +11,8 @@
 #include "signal/rule.h"
 
 #define SM_OTHERS_MAX (SM_CHANNELS_MAX - 1)
-#define SM_OTHER_OLDEST_NS INT64_C(5000000000) /* another channel older than this is not averaged  \
-                                                */
+/* Another channel older than this is not averaged. */
+#define SM_OTHER_OLDEST_NS INT64_C(5000000000)
 
 struct sm_other {
     bool present;
