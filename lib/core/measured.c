@@ -255,6 +255,45 @@ static void fill_capture(const struct sm_core *c, const struct sm_settled *s,
         sm_text_copy(e->remark[e->n_remarks++], SM_REASON_SIZE, "beaker not confirmed");
 }
 
+/* A transit came before it, and it reads like the item before: within the larger of two tolerances
+ * and that capture's U. It may be the same beaker again. A mark has said that it is not. */
+static bool reads_like_the_last(const struct sm_core *c, const struct sm_settled *s)
+{
+    const struct sm_carried_run *run = &c->now->run;
+    const size_t item = c->now->last.item;
+
+    return c->immersion.given && !c->immersion.marked && c->now->last.has && item > 0 &&
+           item <= run->n_items && run->item[item - 1].capture == c->now->last.capture &&
+           fabs(s->value - c->now->last.value) <= fmax(2 * s->tolerance, c->now->last.u95);
+}
+
+/* What reads like the item before it is given to nobody and asked about, unless the method wants no
+ * marks: then it is remarked on. */
+static void doubt(struct sm_core *c, const struct sm_settled *s, struct sm_event_capture *e)
+{
+    struct sm_immersion *im = &c->immersion;
+    struct sm_whereabouts last;
+    struct sm_text t;
+
+    if (!reads_like_the_last(c, s))
+        return;
+    sm_core_where(c, c->now->last.item - 1, &last);
+    if (c->method->marks == SM_MARKS_NONE) {
+        sm_text_init(&t, e->remark[e->n_remarks++], SM_REASON_SIZE);
+        sm_text_addf(&t, "reads like %.100s before it", last.name);
+        return;
+    }
+    sm_text_init(&t, im->why_not_given, sizeof im->why_not_given);
+    sm_text_addf(
+        &t,
+        "reads like %.60s: a new beaker, or the same again? Press next when the probe is in "
+        "%.60s",
+        last.name, im->where.name);
+    im->given = false;
+    memset(&im->where, 0, sizeof im->where);
+    im->where.kind = SM_ITEM_NONE;
+}
+
 void sm_core_captured(struct sm_core *c, const struct sm_settled *s)
 {
     struct sm_immersion *im = &c->immersion;
@@ -264,6 +303,7 @@ void sm_core_captured(struct sm_core *c, const struct sm_settled *s)
 
     assert(im->begun);
     c->now->captures++;
+    doubt(c, s, e);
     fill_capture(c, s, e);
     im->captured = true;
     im->settled_t_ns = c->in.t_ns;

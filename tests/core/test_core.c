@@ -130,6 +130,37 @@ static void a_value_that_changes_without_a_transit_is_given_to_no_item(void **st
     assert_int_equal(day_count(&day, SM_EVENT_QUESTION), 1);
 }
 
+static void what_reads_like_the_item_before_is_asked_about(void **state)
+{
+    (void)state;
+    day_start(&day, true);
+    day_move(&day, day_mv(1.68), 6);
+    day_move(&day, day_mv(1.68), 6); /* the same beaker again: B4 is not what this is */
+    assert_int_equal(day_count(&day, SM_EVENT_CAPTURE), 2);
+    assert_false(day_last(&day, SM_EVENT_CAPTURE)->has_where);
+    assert_int_equal(day_count(&day, SM_EVENT_QUESTION), 1);
+    day_move(&day, day_mv(4.00), 6); /* only a mark goes on */
+    assert_false(day_last(&day, SM_EVENT_CAPTURE)->has_where);
+    day_act(&day, SM_ACT_NEXT, "");
+    day_in(&day, day_mv(4.00), 6);
+    assert_int_equal(day_last(&day, SM_EVENT_CAPTURE)->item, 2);
+    day_move(&day, day_mv(4.00), 3); /* and a mark says that it is another beaker, however alike */
+    day_act(&day, SM_ACT_NEXT, "");
+    day_in(&day, day_mv(4.00), 6);
+    assert_int_equal(day_last(&day, SM_EVENT_CAPTURE)->item, 3);
+}
+
+static void where_the_method_wants_no_marks_it_is_only_remarked_on(void **state)
+{
+    (void)state;
+    day.method.marks = SM_MARKS_NONE;
+    day_start(&day, true);
+    day_move(&day, day_mv(1.68), 6);
+    day_move(&day, day_mv(1.68), 6);
+    assert_int_equal(day_last(&day, SM_EVENT_CAPTURE)->item, 2);
+    assert_int_equal(day_count(&day, SM_EVENT_QUESTION), 0);
+}
+
 static void a_duplicate_is_given_to_nobody_without_its_mark(void **state)
 {
     (void)state;
@@ -408,6 +439,8 @@ int main(void)
         TEST(a_refused_curve_gives_no_results_and_no_check_passes),
         TEST(above_the_highest_standard_there_is_no_number),
         TEST(a_value_that_changes_without_a_transit_is_given_to_no_item),
+        TEST(what_reads_like_the_item_before_is_asked_about),
+        TEST(where_the_method_wants_no_marks_it_is_only_remarked_on),
         TEST(a_duplicate_is_given_to_nobody_without_its_mark),
         TEST(a_double_press_of_next_is_one_item),
         TEST(an_act_that_has_not_seen_the_newest_is_refused),

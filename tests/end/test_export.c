@@ -170,9 +170,9 @@ static void results_are_released_and_are_what_the_scenario_says(void **state)
     static const struct {
         const char *name;
         double ph;
-    } samples[] = { { "raw", 7.34 },           { "settled", 6.41 },      { "filtered", 6.52 },
-                    { "final", 8.12 },         { "tank a", 7.95 },       { "tank b", 7.88 },
-                    { "network north", 7.72 }, { "network south", 7.69 } };
+    } samples[] = { { "raw", 7.34 },           { "settled", 6.41 },       { "final", 8.12 },
+                    { "filtered", 6.52 },      { "network north", 7.72 }, { "tank a", 7.95 },
+                    { "network south", 7.69 }, { "tank b", 7.88 } };
     char *csv = export(0, "--results", NULL), text[256];
 
     (void)state;
