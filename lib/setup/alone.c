@@ -32,12 +32,14 @@ enum sm_status sm_sheet_load(const struct sm_setup *setup, const char *name, con
     return st;
 }
 
-enum sm_status sm_profile_load(const char *name, const char *text, size_t n,
-                               struct sm_profile *ret_profile, struct sm_blames *blames)
+/* One file whose name is what it is called by; `fill` blames what is wrong in it. */
+static enum sm_status load(const char *name, const char *text, size_t n,
+                           void (*fill)(const struct sm_reader *r, const struct sm_node *root,
+                                        const char *stem, void *out),
+                           void *out, struct sm_blames *blames)
 {
     const size_t start = blames->n, before = sm_blames_total(blames);
     const struct sm_reader r = { name, blames };
-    struct sm_profile p = { 0 };
     char stem[SM_NAME_SIZE];
     struct sm_tree *tree;
     const enum sm_status st = sm_tree_parse(name, text, n, &tree, blames);
@@ -45,33 +47,42 @@ enum sm_status sm_profile_load(const char *name, const char *text, size_t n,
     if (st != SM_OK)
         return st;
     sm_path_stem(stem, name);
-    sm_profile_fill(&r, sm_tree_root(tree), stem, &p);
+    fill(&r, sm_tree_root(tree), stem, out);
     sm_tree_destroy(tree);
     sm_blames_sort(blames, start);
-    if (sm_blames_total(blames) > before)
-        return SM_ESYNTAX;
-    *ret_profile = p;
-    return SM_OK;
+    return sm_blames_total(blames) == before ? SM_OK : SM_ESYNTAX;
+}
+
+static void fill_profile(const struct sm_reader *r, const struct sm_node *root, const char *stem,
+                         void *out)
+{
+    sm_profile_fill(r, root, stem, out);
+}
+
+static void fill_method(const struct sm_reader *r, const struct sm_node *root, const char *stem,
+                        void *out)
+{
+    sm_method_fill(r, root, stem, out);
+}
+
+enum sm_status sm_profile_load(const char *name, const char *text, size_t n,
+                               struct sm_profile *ret_profile, struct sm_blames *blames)
+{
+    struct sm_profile p = { 0 };
+    const enum sm_status st = load(name, text, n, fill_profile, &p, blames);
+
+    if (st == SM_OK)
+        *ret_profile = p;
+    return st;
 }
 
 enum sm_status sm_method_load(const char *name, const char *text, size_t n,
                               struct sm_method *ret_method, struct sm_blames *blames)
 {
-    const size_t start = blames->n, before = sm_blames_total(blames);
-    const struct sm_reader r = { name, blames };
     struct sm_method m = { 0 };
-    char stem[SM_NAME_SIZE];
-    struct sm_tree *tree;
-    const enum sm_status st = sm_tree_parse(name, text, n, &tree, blames);
+    const enum sm_status st = load(name, text, n, fill_method, &m, blames);
 
-    if (st != SM_OK)
-        return st;
-    sm_path_stem(stem, name);
-    sm_method_fill(&r, sm_tree_root(tree), stem, &m);
-    sm_tree_destroy(tree);
-    sm_blames_sort(blames, start);
-    if (sm_blames_total(blames) > before)
-        return SM_ESYNTAX;
-    *ret_method = m;
-    return SM_OK;
+    if (st == SM_OK)
+        *ret_method = m;
+    return st;
 }
