@@ -227,9 +227,12 @@ static bool make_room(struct sm_talk *t)
 /* A whole line that is here already. */
 static bool take_line(struct sm_talk *t)
 {
-    const char *from = t->in + t->at;
-    const char *end = t->n > t->at ? memchr(from, '\n', t->n - t->at) : NULL;
+    const char *from, *end;
 
+    if (t->n == t->at) /* nothing, and no storage yet at first */
+        return false;
+    from = t->in + t->at;
+    end = memchr(from, '\n', t->n - t->at);
     if (end == NULL)
         return false;
     t->line = from;

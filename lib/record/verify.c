@@ -161,9 +161,9 @@ static bool read_stamp(struct line l, const struct sm_head *head, struct stamp *
     l = (struct line){ l.s + head->rest, l.n - head->rest };
     if (!pass(&l, ",\"from\":"))
         return false;
-    while (digits < l.n && digits < 19 && l.s[digits] >= '0' && l.s[digits] <= '9')
-        s.from = 10 * s.from + (l.s[digits++] - '0'); /* 18 digits, or refused below */
-    if (digits == 0 || digits > 18 || (l.s[0] == '0' && digits > 1))
+    while (digits < l.n && digits < 18 && l.s[digits] >= '0' && l.s[digits] <= '9')
+        s.from = 10 * s.from + (l.s[digits++] - '0'); /* a digit more is not what comes next */
+    if (digits == 0 || (l.s[0] == '0' && digits > 1))
         return false;
     l = (struct line){ l.s + digits, l.n - digits };
     if (!pass(&l, ",\"hash\":\"") || !take_hex(&l, HASH_N, s.hash) || !pass(&l, "\""))

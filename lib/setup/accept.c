@@ -2,6 +2,8 @@
 /* accept.c: the part of a method that says when a curve and its checks are accepted. What a file
  * leaves out takes the shipped default where there is one for what the method measures. */
 #include "base/time.h"
+
+#include <string.h>
 #include "setup/limit.h"
 
 #define MIN (60 * SM_NS_PER_S)
@@ -237,4 +239,35 @@ void sm_acceptance_fill(const struct sm_reader *r, const struct sm_node *root, s
     fill_curve_rules(r, root, m);
     fill_checks(r, root, m);
     fill_duplicate(r, sm_key(root, "duplicate"), m);
+}
+
+static void plain_limit(struct sm_limit *l)
+{
+    const bool has = l->has;
+    const double value = l->value;
+
+    memset(l, 0, sizeof *l);
+    l->has = has;
+    l->value = value;
+}
+
+void sm_method_plain(struct sm_method *m)
+{
+    struct sm_limit *const limits[] = {
+        &m->r_squared,        &m->residual_sd,      &m->slope.from,      &m->slope.to,
+        &m->slope.warn_from,  &m->slope.warn_to,    &m->offset.from,     &m->offset.to,
+        &m->offset.warn_from, &m->offset.warn_to,   &m->back_calculated, &m->leave_one_out,
+        &m->after_curve,      &m->after_curve_warn, &m->check,           &m->check_warn,
+        &m->duplicate,
+    };
+
+    for (size_t i = 0; i < sizeof limits / sizeof limits[0]; i++)
+        plain_limit(limits[i]);
+    for (size_t i = 0; i < SM_CLASS_COUNT; i++) {
+        const struct sm_quantity q = m->tolerance_written[i];
+
+        memset(&m->tolerance_written[i], 0, sizeof q);
+        m->tolerance_written[i].value = q.value;
+        m->tolerance_written[i].unit = q.unit;
+    }
 }

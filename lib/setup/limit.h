@@ -11,4 +11,8 @@ bool sm_get_limit(const struct sm_reader *r, const struct sm_node *node, enum sm
 
 /* Levels, R² and the rules beside it, checks and duplicates; after model and units are known. */
 void sm_acceptance_fill(const struct sm_reader *r, const struct sm_node *root, struct sm_method *m);
+
+/* What lies between the fields of a filled method becomes zero, so that equal methods are equal in
+ * memory. */
+void sm_method_plain(struct sm_method *m);
 #endif

@@ -493,4 +493,5 @@ void sm_method_fill(const struct sm_reader *r, const struct sm_node *root, const
     fill_rule(r, root, m);
     sm_acceptance_fill(r, root, m);
     fill_odds(r, root, m);
+    sm_method_plain(m);
 }
