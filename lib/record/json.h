@@ -1,7 +1,8 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* json.h: our own JSON writer, so that one thing is always written as the same bytes. Private to
- * the room. Commas come by themselves: what was just opened ends with '{' or '[', and a string
- * always ends with its quote. A key of NULL writes an element of a list. */
+/* json.h: our own JSON writer, so that one thing is always written as the same bytes: entries of
+ * the log, and what the daemon says in the log's words. Commas come by themselves: what was just
+ * opened ends with '{' or '[', and a string always ends with its quote. A key of NULL writes an
+ * element of a list. */
 #ifndef SM_RECORD_JSON_H
 #define SM_RECORD_JSON_H
 #include <stdbool.h>
